@@ -1,0 +1,3 @@
+//! References of the integer family.
+
+pub mod multiply;

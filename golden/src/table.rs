@@ -1,0 +1,161 @@
+//! The accepted values: embedded JSON tables, pinned by SHA-256.
+
+use std::collections::HashMap;
+use std::fmt;
+use std::sync::LazyLock;
+
+use kernels::{Case, Seed, Size};
+use serde::{Deserialize, Serialize};
+use sha2::{Digest, Sha256};
+
+/// Seeds 0 … n−1 are in the tables for each listed (kernel, size in KiB, n). A test holds this against the catalogue.
+pub static PLAN: &[(&str, &[(u32, u64)])] = &[("integer.multiply", &[(9, 64)])];
+
+macro_rules! embed {
+    ($($id:literal),* $(,)?) => {
+        &[$(($id, include_str!(concat!("../tables/", $id, ".json")))),*]
+    };
+}
+
+/// Every embedded table's text by kernel id.
+pub static TABLES: &[(&str, &str)] = embed!["integer.multiply",];
+
+/// SHA-256 of each table, in the format of `sha256sum`.
+pub static PINS: &str = include_str!("../tables/SHA256SUMS");
+
+/// A table's file.
+#[derive(Debug, Serialize, Deserialize)]
+pub struct Table {
+    /// `proofhouse/golden/1`.
+    pub schema: String,
+    /// Kernel id.
+    pub kernel: String,
+    /// Who computed the values.
+    pub provenance: Provenance,
+    /// The accepted outputs.
+    pub cases: Vec<Row>,
+}
+
+/// The two ways that agreed on every word of a table.
+#[derive(Debug, Serialize, Deserialize)]
+pub struct Provenance {
+    /// Rust module and the SHA-256 of its source.
+    pub reference: Source,
+    /// Python file and the SHA-256 of its source.
+    pub witness: Source,
+    /// Libraries that the witness leans on, with versions.
+    pub libraries: String,
+}
+
+/// A source file by path and digest.
+#[derive(Debug, Serialize, Deserialize)]
+pub struct Source {
+    /// Path below `golden/`.
+    pub file: String,
+    /// SHA-256 of the file, hexadecimal.
+    pub sha256: String,
+}
+
+/// One accepted output.
+#[derive(Debug, Serialize, Deserialize)]
+pub struct Row {
+    /// Operand seed.
+    pub seed: u64,
+    /// Footprint in KiB.
+    pub size: u32,
+    /// Output words, 16 hexadecimal digits each, most significant digit first.
+    pub words: String,
+}
+
+/// Why the embedded tables cannot be believed.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub enum TableError {
+    /// The SHA-256 of the table is not the pinned one, or there is no pin.
+    Digest(&'static str),
+    /// The table is no valid JSON of its schema.
+    Format(&'static str, String),
+}
+
+impl fmt::Display for TableError {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        match self {
+            TableError::Digest(id) => {
+                write!(f, "golden table {id} does not have its pinned digest; reinstall the program")
+            }
+            TableError::Format(id, why) => write!(f, "golden table {id} cannot be read: {why}"),
+        }
+    }
+}
+
+impl std::error::Error for TableError {}
+
+/// Lower-case hexadecimal SHA-256.
+pub fn sha256_hex(bytes: &[u8]) -> String {
+    Sha256::digest(bytes).iter().map(|b| format!("{b:02x}")).collect()
+}
+
+/// Checks every embedded table against its pin.
+pub fn verify_pins() -> Result<(), TableError> {
+    for (id, text) in TABLES {
+        let line = format!("{}  {id}.json", sha256_hex(text.as_bytes()));
+        if !PINS.lines().any(|pin| pin == line) {
+            return Err(TableError::Digest(id));
+        }
+    }
+    Ok(())
+}
+
+/// SHA-256 over all pins: one digest that names the whole set of tables.
+pub fn set_digest() -> String {
+    sha256_hex(PINS.as_bytes())
+}
+
+/// Output words from their hexadecimal text.
+pub fn parse_words(text: &str) -> Option<Vec<u64>> {
+    if !text.is_ascii() || !text.len().is_multiple_of(16) {
+        return None;
+    }
+    (0..text.len() / 16).map(|i| u64::from_str_radix(&text[i * 16..i * 16 + 16], 16).ok()).collect()
+}
+
+/// The inverse of [`parse_words`].
+pub fn format_words(words: &[u64]) -> String {
+    words.iter().map(|w| format!("{w:016x}")).collect()
+}
+
+type Parsed = HashMap<Case, Vec<u64>>;
+
+fn parse_all() -> Result<Parsed, TableError> {
+    let mut all = HashMap::new();
+    for (id, text) in TABLES {
+        let table: Table = serde_json::from_str(text).map_err(|e| TableError::Format(id, e.to_string()))?;
+        for row in table.cases {
+            let words =
+                parse_words(&row.words).ok_or_else(|| TableError::Format(id, format!("words of seed {}", row.seed)))?;
+            all.insert(Case { kernel: id, seed: Seed(row.seed), size: Size(row.size) }, words);
+        }
+    }
+    Ok(all)
+}
+
+static PARSED: LazyLock<Result<Parsed, TableError>> = LazyLock::new(|| verify_pins().and_then(|()| parse_all()));
+
+/// Opens the tables: pins checked, everything parsed.
+pub fn open() -> Result<(), TableError> {
+    PARSED.as_ref().map(|_| ()).map_err(Clone::clone)
+}
+
+/// The accepted output of `case`, if the tables have it. Call [`open`] first to learn of damaged tables.
+pub fn expected(case: &Case) -> Option<&'static [u64]> {
+    PARSED.as_ref().ok()?.get(case).map(Vec::as_slice)
+}
+
+/// The cases in the tables for a kernel and size, by seed.
+pub fn cases(kernel: &str, size: Size) -> Vec<Case> {
+    PLAN.iter()
+        .filter(|(id, _)| *id == kernel)
+        .flat_map(|(id, sizes)| sizes.iter().map(move |s| (*id, *s)))
+        .filter(|(_, (kib, _))| *kib == size.0)
+        .flat_map(|(id, (_, seeds))| (0..seeds).map(move |s| Case { kernel: id, seed: Seed(s), size }))
+        .collect()
+}

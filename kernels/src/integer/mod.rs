@@ -1,0 +1,3 @@
+//! Integer units: multiplier, divider, carry chains.
+
+pub mod multiply;

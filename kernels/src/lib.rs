@@ -1,0 +1,10 @@
+//! What a core is made to do: deterministic computations without IO, clock or threads, knowing no golden value.
+
+pub mod catalogue;
+pub mod compare;
+pub mod integer;
+pub mod isa;
+pub mod kernel;
+pub mod operands;
+
+pub use kernel::{Build, Case, Kernel, Proven, Ready, Seed, Size, Variant, Work};

@@ -1,0 +1,1 @@
+//! Finds CPU cores that compute wrongly, and says how rare their wrong answers are.

@@ -1,0 +1,3 @@
+//! The command `proofhouse`.
+
+fn main() {}
