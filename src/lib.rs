@@ -1,1 +1,9 @@
 //! Finds CPU cores that compute wrongly, and says how rare their wrong answers are.
+
+pub mod error;
+pub mod event;
+pub mod exit_code;
+pub mod host;
+pub mod judge;
+pub mod plan;
+pub mod run;

@@ -1,0 +1,3 @@
+//! The one integration binary, one file a topic.
+
+mod supervisor;
