@@ -351,7 +351,7 @@ fn windows_with_any_fault_at_any_point_keep_their_promises() {
     {
         assert!(deeds.get(&deed).copied().unwrap_or(0) >= 300, "{deed:?} was met too seldom: {deeds:?}");
     }
-    assert_eq!(endings.into_iter().collect::<Vec<_>>(), ["Done", "Failed", "Signal"], "kinds of ending that were met");
+    assert_eq!(endings.into_iter().collect::<Vec<_>>(), ["Budget", "Done", "Failed", "Signal"], "kinds of ending that were met");
 }
 
 #[test]
