@@ -5,5 +5,7 @@ pub mod event;
 pub mod exit_code;
 pub mod host;
 pub mod judge;
+pub mod ledger;
 pub mod plan;
 pub mod run;
+pub mod stats;
