@@ -91,6 +91,8 @@ pub struct Assignment {
 pub struct Intent {
     /// The job.
     pub job_id: u64,
+    /// What kind of job.
+    pub job: Job,
     /// Host clock.
     pub wall_ms: u64,
     /// Each core that starts work now.
@@ -232,6 +234,8 @@ pub struct Mismatch {
     pub job: Job,
     /// Slice number within the job.
     pub slice: u64,
+    /// Why the slice was run: repeats for confirmation are no news.
+    pub purpose: Purpose,
     /// Logical cpu.
     pub cpu: Cpu,
     /// Physical core.

@@ -1,1 +1,5 @@
 //! Finds CPU cores that compute wrongly, and says how rare their wrong answers are.
+
+pub mod event;
+pub mod host;
+pub mod ledger;
