@@ -9,3 +9,6 @@ pub mod ledger;
 pub mod plan;
 pub mod run;
 pub mod stats;
+pub mod event;
+pub mod host;
+pub mod ledger;
