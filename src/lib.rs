@@ -12,3 +12,4 @@ pub mod stats;
 pub mod event;
 pub mod host;
 pub mod ledger;
+pub mod stats;
