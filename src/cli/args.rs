@@ -226,7 +226,10 @@ pub fn parse_variants(names: &[String]) -> Result<Vec<kernels::Variant>, String>
     let known: Vec<&str> = kernels::Variant::ALL.iter().map(|v| v.name()).collect();
     names
         .iter()
-        .map(|n| kernels::Variant::parse(n).ok_or_else(|| format!("--variants {n}: no such variant; known are {}", known.join(", "))))
+        .map(|n| {
+            kernels::Variant::parse(n)
+                .ok_or_else(|| format!("--variants {n}: no such variant; known are {}", known.join(", ")))
+        })
         .collect()
 }
 

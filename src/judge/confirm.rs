@@ -228,11 +228,6 @@ impl Confirmer {
         }
         findings
     }
-
-    /// Whether any confirmation is under way.
-    pub fn busy(&self) -> bool {
-        self.open.iter().any(|o| !o.closed)
-    }
 }
 
 impl Open {

@@ -201,7 +201,8 @@ mod tests {
     #[test]
     fn deep_nesting_ends_neither_the_stack_nor_the_program() {
         let deep = "[".repeat(1 << 20);
-        for body in [format!("{{\"kind\":\"slice\",\"x\":{deep}"), format!("{{\"kind\":\"novelty\",\"x\":{deep}"), deep] {
+        for body in [format!("{{\"kind\":\"slice\",\"x\":{deep}"), format!("{{\"kind\":\"novelty\",\"x\":{deep}"), deep]
+        {
             assert!(matches!(decode(&line_of(&body)), Err(Because::Record(_))));
         }
     }
@@ -217,7 +218,13 @@ mod tests {
     fn other_spellings_of_the_same_json_are_refused() {
         let good = String::from_utf8(line_of(r#"{"kind":"remark","job_id":1,"wall_ms":2,"text":"x"}"#)).unwrap();
         decode(good.as_bytes()).unwrap();
-        for (from, to) in [("\"seq\":7", "\"seq\":07"), ("{\"v\"", "{ \"v\""), (",\"body\"", ", \"body\""), ("}}", "}} "), ("\"v\":1", "\"v\":01")] {
+        for (from, to) in [
+            ("\"seq\":7", "\"seq\":07"),
+            ("{\"v\"", "{ \"v\""),
+            (",\"body\"", ", \"body\""),
+            ("}}", "}} "),
+            ("\"v\":1", "\"v\":01"),
+        ] {
             let other = good.replacen(from, to, 1);
             assert_ne!(other, good);
             assert!(matches!(decode(other.as_bytes()), Err(Because::Layout(_))), "{other}");

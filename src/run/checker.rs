@@ -104,7 +104,7 @@ mod tests {
 
     #[test]
     fn a_wrong_fold_is_named_by_its_place() {
-        let seats: Vec<Seat> = pinning::mask().unwrap().into_iter().map(|c| (c, c.0)).collect();
+        let seats: Vec<Seat> = crate::host::affinity::mask().unwrap().iter().map(|c| (c, c.0)).collect();
         if seats.len() < 2 {
             return;
         }

@@ -118,9 +118,4 @@ impl Child {
             std::thread::spawn(move || waitpid(pid, None));
         }
     }
-
-    /// Its process id.
-    pub fn pid(&self) -> i32 {
-        self.pid.as_raw()
-    }
 }

@@ -22,8 +22,8 @@ pub trait Director {
     fn poll(&mut self, at: Duration, progress: f64, slices_left: usize) -> Result<Vec<Request>, String>;
     /// Readings of a cpu, if the host has any.
     fn surroundings(&mut self, cpu: Cpu) -> Surroundings;
-    /// Told of each worker's process id.
-    fn started(&mut self, _cpu: Cpu, _pid: i32) {}
+    /// Whether the job is to end before its budget.
+    fn stop(&self) -> bool;
 }
 
 /// How a job went, as far as the driver knows.
@@ -168,7 +168,8 @@ impl Driver<'_> {
         let progress = self.supervisor.progress(at);
         let wanted = self.director.poll(at, progress, self.supervisor.slices_left());
         self.requests(wanted);
-        self.feed(None, Input::Tick);
+        let input = if self.director.stop() { Input::Interrupt } else { Input::Tick };
+        self.feed(None, input);
     }
 
     fn requests(&mut self, wanted: Result<Vec<Request>, String>) {
@@ -219,7 +220,6 @@ impl Driver<'_> {
         self.generation += 1;
         match Child::start(&self.program, cpu, self.generation, self.hear.clone()) {
             Ok(child) => {
-                self.director.started(cpu, child.pid());
                 self.children.insert(cpu, child);
             }
             Err(why) => self.feed(None, Input::Gone(cpu, How::NotStarted(why.to_string()))),

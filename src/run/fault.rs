@@ -8,21 +8,21 @@ use serde::{Deserialize, Serialize};
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 #[serde(rename_all = "snake_case")]
 pub enum Fault {
-    /// One bit of one output word is flipped with this probability per run.
+    /// One bit of one output word is flipped: in the first run, and in later ones with this probability.
     FlippedBit {
         /// Probability per run.
         per_run: f64,
         /// Seed of time and place.
         seed: u64,
     },
-    /// In every output, the words of one lane have one bit stuck at one.
+    /// In every output, the words of one lane hold one value.
     StuckLane {
         /// Words whose index is this, modulo 4.
         lane: u8,
-        /// Bit number.
-        bit: u8,
+        /// The value.
+        value: u64,
     },
-    /// One bit is flipped with this probability per run, and the worker's own comparison sees nothing.
+    /// As a flipped bit, and the worker's own comparison sees nothing.
     BlindComparison {
         /// Probability per run.
         per_run: f64,
@@ -49,6 +49,7 @@ pub enum Fault {
 pub struct Armed {
     fault: Fault,
     rng: ChaCha12Rng,
+    shown: bool,
 }
 
 /// What a fault does to the run under way.
@@ -64,7 +65,7 @@ impl Armed {
             Fault::FlippedBit { seed, .. } | Fault::BlindComparison { seed, .. } => seed,
             _ => 0,
         };
-        Armed { fault, rng: ChaCha12Rng::seed_from_u64(seed) }
+        Armed { fault, rng: ChaCha12Rng::seed_from_u64(seed), shown: false }
     }
 
     /// Alters one output; `elapsed` is the part of the slice that is over.
@@ -78,9 +79,10 @@ impl Armed {
                 self.flip(out, per_run);
                 Effect { blind: true }
             }
-            Fault::StuckLane { lane, bit } => {
-                for word in out.iter_mut().skip(usize::from(lane % 4)).step_by(4) {
-                    *word |= 1 << (bit % 64);
+            Fault::StuckLane { lane, value } => {
+                let lanes = out.len().min(4);
+                for word in out.iter_mut().skip(usize::from(lane) % lanes).step_by(lanes) {
+                    *word = value;
                 }
                 Effect { blind: false }
             }
@@ -103,7 +105,8 @@ impl Armed {
     fn flip(&mut self, out: &mut [u64], per_run: f64) {
         // 53 random bits as a fraction of 2^53: uniform in [0, 1)
         let chance = (self.rng.next_u64() >> 11) as f64 / (1u64 << 53) as f64;
-        if chance < per_run {
+        if chance < per_run || !self.shown {
+            self.shown = true;
             let place = self.rng.next_u64();
             let index = (place >> 6) as usize % out.len();
             out[index] ^= 1 << (place & 63);

@@ -1,15 +1,14 @@
-//! The thin layer over the scheduler's calls: hold a thread on one cpu, and read where it really is.
+//! Hold a thread on one cpu, and read where it really is.
 //!
 //! The kernel moves threads silently when a cpuset shrinks or a cpu goes offline, so a request to be pinned proves
-//! nothing: [`place`] is read before and after every slice, by the `getcpu` system call itself (the C library's
-//! wrapper may answer 0 under user-mode emulation).
+//! nothing: [`place`] is read before and after every slice.
 
 use std::io;
 use std::time::Duration;
 
 use serde::{Deserialize, Serialize};
 
-use crate::host::Cpu;
+use crate::host::{Cpu, CpuSet, affinity};
 
 /// Where a thread is and where it may be.
 #[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
@@ -27,61 +26,17 @@ impl Place {
     }
 }
 
-/// Longest mask asked for, in bytes: 65,536 cpus.
-const LONGEST_MASK: usize = 8192;
-
 /// Holds the calling thread, and what it starts from now on, on one cpu.
 pub fn pin(cpu: Cpu) -> io::Result<()> {
-    let index = cpu.0 as usize;
-    if index >= LONGEST_MASK * 8 {
-        return Err(io::Error::new(io::ErrorKind::InvalidInput, format!("cpu {cpu} is beyond any mask")));
-    }
-    set_mask(&[cpu])
+    let only = CpuSet::from_iter([cpu]);
+    let got = affinity::bind(&only)?;
+    // the kernel silently drops what the cpuset forbids
+    if got == only { Ok(()) } else { Err(io::Error::other(format!("the system gave cpus {got} instead"))) }
 }
 
-/// Lets the calling thread run on any of `cpus`.
-pub fn set_mask(cpus: &[Cpu]) -> io::Result<()> {
-    let bits = libc::c_ulong::BITS as usize;
-    let longest = cpus.iter().map(|c| c.0 as usize).max().unwrap_or(0);
-    let mut mask = vec![0 as libc::c_ulong; longest / bits + 1];
-    for cpu in cpus {
-        mask[cpu.0 as usize / bits] |= 1 << (cpu.0 as usize % bits);
-    }
-    // SAFETY: the pointer and the length in bytes describe `mask`, which outlives the call; the call only reads it
-    let result = unsafe { libc::sched_setaffinity(0, size_of_val(mask.as_slice()), mask.as_ptr().cast()) };
-    if result == 0 { Ok(()) } else { Err(io::Error::last_os_error()) }
-}
-
-/// The cpus that the calling thread may run on.
-pub fn mask() -> io::Result<Vec<Cpu>> {
-    let bits = libc::c_ulong::BITS;
-    let mut length = 128;
-    loop {
-        let mut mask = vec![0 as libc::c_ulong; length / size_of::<libc::c_ulong>()];
-        // SAFETY: the kernel writes at most `length` bytes, which is the size of `mask`
-        let got = unsafe { libc::syscall(libc::SYS_sched_getaffinity, 0, length, mask.as_mut_ptr()) };
-        if got >= 0 {
-            let set = |i: u32| mask[(i / bits) as usize] >> (i % bits) & 1 == 1;
-            return Ok((0..mask.len() as u32 * bits).filter(|&i| set(i)).map(Cpu).collect());
-        }
-        let why = io::Error::last_os_error();
-        if why.raw_os_error() != Some(libc::EINVAL) || length >= LONGEST_MASK {
-            return Err(why);
-        }
-        length *= 2;
-    }
-}
-
-/// Where the calling thread is, by system calls.
+/// Where the calling thread is.
 pub fn place() -> io::Result<Place> {
-    let mut cpu: libc::c_uint = 0;
-    let nowhere = std::ptr::null_mut::<libc::c_void>();
-    // SAFETY: the kernel writes one unsigned int to a valid place; null is allowed for what is not wanted
-    let result = unsafe { libc::syscall(libc::SYS_getcpu, &raw mut cpu, nowhere, nowhere) };
-    if result != 0 {
-        return Err(io::Error::last_os_error());
-    }
-    Ok(Place { cpu: Cpu(cpu), mask: mask()? })
+    Ok(Place { cpu: affinity::current_cpu()?, mask: affinity::mask()?.iter().collect() })
 }
 
 /// Processor time that the calling thread has used.
@@ -100,7 +55,7 @@ mod tests {
     #[test]
     fn a_pinned_thread_is_where_it_was_put() {
         std::thread::spawn(|| {
-            for cpu in mask().unwrap() {
+            for cpu in affinity::mask().unwrap().iter() {
                 pin(cpu).unwrap();
                 assert!(place().unwrap().is_only(cpu));
             }

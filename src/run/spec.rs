@@ -62,6 +62,8 @@ pub struct Setup {
     pub longest: Duration,
     /// How long past its span a slice may answer before its worker counts as hung.
     pub grace: Duration,
+    /// Workers of one cpu that may be lost before it is left alone.
+    pub losses_borne: u32,
     /// Who else is busy, and how hard, in words: `all steady 100%`.
     pub arrangement: String,
     /// The cpus with their work.

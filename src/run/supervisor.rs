@@ -22,8 +22,6 @@ const TAIL: Duration = Duration::from_millis(120);
 const SHORTEST: Duration = Duration::from_millis(4);
 /// A worker that is not ready by then was not started.
 const READY_WITHIN: Duration = Duration::from_secs(10);
-/// Workers of one cpu that may be lost before the cpu is left alone.
-const LOSSES_BORNE: u32 = 8;
 /// After a halt, answers are waited for this long.
 const HALT_WITHIN: Duration = Duration::from_millis(400);
 
@@ -334,7 +332,7 @@ impl Supervisor {
         let ending = self.ending.is_some();
         let Some(lane) = self.lanes.get_mut(&cpu) else { return };
         lane.losses += 1;
-        lane.worker = if lane.losses >= LOSSES_BORNE || ending { Worker::GivenUp } else { Worker::Down };
+        lane.worker = if lane.losses >= self.setup.losses_borne || ending { Worker::GivenUp } else { Worker::Down };
         lane.stopped = false;
         let core = lane.core;
         let mut flights = std::mem::take(&mut lane.flights).into_iter();
@@ -359,7 +357,7 @@ impl Supervisor {
             self.close_void(now, cpu, &flight, "its worker was lost before it began".to_owned());
         }
         if given_up {
-            self.remark(now, format!("cpu {cpu} is left alone after {LOSSES_BORNE} lost workers"));
+            self.remark(now, format!("cpu {cpu} is left alone after {} lost workers", self.setup.losses_borne));
         }
     }
 
@@ -488,6 +486,7 @@ impl Supervisor {
             cpu,
             core: lane.core,
             slice,
+            purpose: flight.spec.purpose,
             kernel: flight.spec.kernel.to_owned(),
             variant: flight.spec.variant.to_string(),
             condition: flight.condition.clone(),

@@ -268,6 +268,7 @@ fn world(seed: u64) -> World {
         budget: BUDGET,
         longest: Duration::from_secs(2),
         grace: Duration::from_secs(1),
+        losses_borne: 8,
         arrangement: "all steady 100%".into(),
         tracks,
     };
@@ -351,7 +352,11 @@ fn windows_with_any_fault_at_any_point_keep_their_promises() {
     {
         assert!(deeds.get(&deed).copied().unwrap_or(0) >= 300, "{deed:?} was met too seldom: {deeds:?}");
     }
-    assert_eq!(endings.into_iter().collect::<Vec<_>>(), ["Budget", "Done", "Failed", "Signal"], "kinds of ending that were met");
+    assert_eq!(
+        endings.into_iter().collect::<Vec<_>>(),
+        ["Budget", "Done", "Failed", "Signal"],
+        "kinds of ending that were met"
+    );
 }
 
 #[test]
