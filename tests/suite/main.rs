@@ -1,0 +1,3 @@
+//! One integration binary; one file a topic.
+
+mod statistics;
