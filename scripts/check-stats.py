@@ -461,8 +461,8 @@ def main():
                     error, theirs = relative(OURS, truth), truth
             if at is None or not error <= worst:
                 worst, at = error, (args, OURS, theirs)
-        shown = str(at) if worst > limit else str(at[0])
-        print(f"{name:<22}{len(drawn):>7}  {worst:9.2e}  {limit:7.0e}  {overruled:>9}  {shown[:400]}", flush=True)
+        shown = str(at)[:600] if worst > limit else str(at[0])[:160]
+        print(f"{name:<22}{len(drawn):>7}  {worst:9.2e}  {limit:7.0e}  {overruled:>9}  {shown}", flush=True)
         if not worst <= limit:
             failed.append(name)
     print(f"{len(FUNCTIONS if not options.only else options.only) - len(failed)} passed, {len(failed)} failed", *failed)

@@ -1,3 +1,4 @@
 //! One integration binary; one file a topic.
 
 mod statistics;
+mod statistics_edges;
