@@ -64,6 +64,26 @@ fn answer(words: &[String]) -> Result<Vec<f64>, StatsError> {
             let test = stats::dispersion_with_exposure(&counts(1), &numbers(2))?;
             vec![test.chi_square, test.p_upper]
         }
+        "gamma_fit" => {
+            let prior = stats::GammaPrior::fit(&counts(1), &numbers(2))?;
+            vec![prior.shape, prior.rate]
+        }
+        "gamma_posterior" => {
+            let prior = stats::GammaPrior { shape: number(1), rate: number(2) };
+            ends(prior.posterior(count(3), number(4), number(5))?)
+        }
+        "clustered_rate" => {
+            let clusters: Vec<(u64, f64)> = counts(1).into_iter().zip(numbers(2)).collect();
+            ends(stats::clustered_rate(&clusters, number(3))?)
+        }
+        "sequential" => {
+            let plan = stats::SequentialPlan::wald(number(1), number(2), number(3), number(4), count(5) as usize)?;
+            let point = plan.at_rate(number(6))?;
+            vec![point.accept, point.reject, point.expected_exposure]
+        }
+        "comparison_power" => {
+            vec![stats::comparison_power((number(1), number(2)), (number(3), number(4)), number(5))?]
+        }
         "holm" => stats::holm(&numbers(1))?,
         "hochberg" => stats::hochberg(&numbers(1))?,
         "benjamini_hochberg" => stats::benjamini_hochberg(&numbers(1))?,

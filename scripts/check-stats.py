@@ -21,7 +21,7 @@ import warnings
 
 import mpmath as mp
 import numpy as np
-from scipy import optimize, special, stats
+from scipy import linalg, optimize, special, stats
 from statsmodels.stats.multitest import multipletests
 
 warnings.filterwarnings("ignore")
@@ -175,6 +175,68 @@ def dispersion(counts, exposures):
     e = x.sum() * t / t.sum()
     chi = ((x - e) ** 2 / e).sum()
     return chi, stats.chi2.sf(chi, len(x) - 1)
+
+
+def gamma_fit(counts, exposures):
+    """The two score equations, by Newton in high precision from the program's own answer."""
+    x, t = [mp.mpf(v) for v in counts], [mp.mpf(v) for v in exposures]
+
+    def scores(a, b):
+        by_shape = mp.fsum(mp.digamma(a + v) - mp.digamma(a) + mp.log(b / (b + s)) for v, s in zip(x, t))
+        return by_shape, mp.fsum(a / b - (a + v) / (b + s) for v, s in zip(x, t))
+
+    with mp.workdps(25):
+        return tuple(float(v) for v in mp.findroot(scores, OURS, tol=1e-30))
+
+
+def gamma_posterior(a, b, x, t, conf):
+    side = (1 - conf) / 2
+    return special.gammaincinv(a + x, side) / (b + t), special.gammainccinv(a + x, side) / (b + t)
+
+
+def clustered_rate(counts, exposures, conf):
+    x, t, side = np.array(counts, float), np.array(exposures), (1 - conf) / 2
+    rate, m = x.sum() / t.sum(), len(x)
+    d = max(1.0, m / (m - 1) * ((x - rate * t) ** 2).sum() / x.sum())
+    k = x.sum() / d
+    return special.gammaincinv(k, side) * d / t.sum(), special.gammainccinv(k + 1, side) * d / t.sum()
+
+
+def sequential(good, bad, alpha, beta, most, rate):
+    """The same plan as a chain in continuous time: exponential of its generator over each stretch."""
+    slope = math.log(bad / good) / (bad - good)
+    up, down = math.log((1 - alpha) / beta) / (bad - good), math.log((1 - beta) / alpha) / (bad - good)
+    end = max(slope * most + (up - down) / 2, up)
+    accept = [min(slope * k + up, end) for k in range(most)]
+    reject = {k: min(slope * k - down, end) for k in range(1, most) if slope * k - down > 0} | {most: end}
+    # states: counts 0 … most - 1, rejected, and a clock that integrates the time in the open states
+    state, now, accepted = np.zeros(most + 2), 0.0, 0.0
+    state[0] = 1
+    for cut in sorted({*accept, *reject.values()}):
+        limit = min(k for k, until in reject.items() if until >= cut)
+        flow = np.zeros((most + 2, most + 2))
+        for k in range(most):
+            flow[k, k], flow[k, most + 1] = -rate, 1.0
+            flow[k, k + 1 if k + 1 < limit else most] += rate
+        state[most] += state[limit:most].sum()
+        state[limit:most] = 0
+        state = state @ linalg.expm(flow * (cut - now))
+        for k in range(most):
+            if accept[k] <= cut:
+                accepted, state[k] = accepted + state[k], 0.0
+        now = cut
+    return accepted, state[most], state[most + 1]
+
+
+def comparison_power(m1, t1, m2, t2, level):
+    total, p0, p1 = stats.poisson(m1 + m2), t1 / (t1 + t2), m1 / (m1 + m2)
+    reach = 12 * (m1 + m2) ** 0.5 + 80
+    low, high = int(max(m1 + m2 - reach, 0)), int(m1 + m2 + reach)
+    n = np.arange(low, high + 1)
+    critical = stats.binom.isf(level, n, p0) + 1
+    critical = np.where(stats.binom.sf(critical - 2, n, p0) <= level, critical - 1, critical)
+    power = (total.pmf(n) * stats.binom.sf(critical - 1, n, p1)).sum()
+    return OURS if max(power, *OURS) < 1e-15 else (power,)  # smaller ones are not resolved, and of no use
 
 
 def adjusted(kind):
@@ -360,6 +422,22 @@ def dispersion_input():
     return spread(cells), t
 
 
+def gamma_input():
+    """Counts that scatter clearly more than chance, so that there is a law to fit."""
+    cells = rng.randint(5, 60)
+    t = tuple(10 ** rng.uniform(-1, 2) for _ in range(cells))
+    shape, mean = 10 ** rng.uniform(-0.7, 0.5), 10 ** rng.uniform(-0.5, 1)
+    counts = tuple(int(np.random.default_rng(rng.getrandbits(32)).poisson(min(rng.gammavariate(shape, mean / shape) * s, 1e6))) for s in t)
+    e = np.array(t) * sum(counts) / sum(t)
+    return (counts, t) if sum(counts) and ((np.array(counts) - e) ** 2 / e).sum() > 2 * cells else gamma_input()
+
+
+def plan_input():
+    good = 10 ** rng.uniform(-4, 1)
+    bad = good * rng.uniform(1.3, 10)
+    return good, bad, rng.uniform(0.01, 0.4), rng.uniform(0.01, 0.4), rng.randint(1, 20), math.exp(rng.uniform(math.log(good / 2), math.log(bad * 2)))
+
+
 def runs_input():
     return 10 ** rng.uniform(-12, -0.05), rng.choice([0, 1, big(100)]), confidence()
 
@@ -387,6 +465,17 @@ FUNCTIONS = {
     "fisher_exact": (lambda: (lambda t: t if sum(t) else (1, 0, 0, 1))(table()), fisher_exact, VALUE, judge_fisher),
     "odds_ratio": (lambda: (*tuple(v + (i in (0, 3)) for i, v in enumerate(table())), confidence()), odds_ratio, END, judge_odds),
     "dispersion": (dispersion_input, dispersion, VALUE, judge_dispersion),
+    "gamma_fit": (gamma_input, gamma_fit, VALUE, None),
+    "gamma_posterior": (
+        lambda: (10 ** rng.uniform(-0.7, 3), 10 ** rng.uniform(-3, 3), big(10**4), rng.choice([0.0, exposure()]), confidence()),
+        gamma_posterior, END, None,
+    ),
+    "clustered_rate": (lambda: (*dispersion_input(), confidence()), clustered_rate, END, None),
+    "sequential": (plan_input, sequential, VALUE, None),
+    "comparison_power": (
+        lambda: (10 ** rng.uniform(-1, 3), rng.uniform(0.1, 10), 10 ** rng.uniform(-1, 3), rng.uniform(0.1, 10), rng.choice([0.05, 0.01, 1e-6])),
+        comparison_power, VALUE, None,
+    ),
     "holm": (lambda: (p_values(),), adjusted("holm"), VALUE, None),
     "hochberg": (lambda: (p_values(),), adjusted("simes-hochberg"), VALUE, None),
     "benjamini_hochberg": (lambda: (p_values(),), adjusted("fdr_bh"), VALUE, None),

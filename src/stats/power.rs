@@ -34,7 +34,7 @@ pub fn exposure_to_detect(rate: f64, probability: f64) -> Result<f64, StatsError
 /// An expectation or exposure not positive and finite, or a level outside (0, 1).
 ///
 /// Source: the exact sum over the total count, each with its own critical count (E. L. Lehmann, Testing Statistical
-/// Hypotheses, 4.5). The work grows with the square root of the expected total.
+/// Hypotheses, 4.5), resolved down to a power of 1e-15. The work grows with the square root of the expected total.
 pub fn comparison_power(
     (first, first_exposure): (f64, f64),
     (second, second_exposure): (f64, f64),

@@ -140,9 +140,9 @@ impl SequentialPlan {
             let law = Poisson { mean: rate * (cut - now) };
             let mut next = vec![0.0; most];
             for (from, &share) in open.iter().enumerate().filter(|(_, share)| **share > 0.0) {
-                for to in from..rejecting.max(from) {
+                for (to, slot) in next.iter_mut().enumerate().take(rejecting).skip(from) {
                     let more = (to - from) as f64;
-                    next[to] += share * law.ln_point(more).exp();
+                    *slot += share * law.ln_point(more).exp();
                     // mean time spent with `more` further events: P(more than that many come) / rate
                     expected_exposure += share * law.ln_tail(Tail::Upper, more + 1.0, WHOLE).exp() / rate;
                 }
