@@ -1,0 +1,3 @@
+//! The one integration binary: one module a topic.
+
+mod host;
