@@ -5,3 +5,6 @@ mod supervisor;
 
 mod statistics;
 mod statistics_edges;
+//! The one integration binary: one module a topic.
+
+mod host;
