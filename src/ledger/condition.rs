@@ -71,8 +71,10 @@ impl fmt::Display for Condition {
         match self {
             Condition::Clean => f.write_str("clean"),
             Condition::TornTail { tails } => {
-                let list: Vec<String> =
-                    tails.iter().map(|t| format!("{} bytes in {} from byte {}", t.bytes, names::segment(t.segment), t.at)).collect();
+                let list: Vec<String> = tails
+                    .iter()
+                    .map(|t| format!("{} bytes in {} from byte {}", t.bytes, names::segment(t.segment), t.at))
+                    .collect();
                 write!(f, "torn tail: {}", list.join(", "))
             }
             Condition::Broken { seq, segment, at, because } => {

@@ -109,9 +109,7 @@ mod tests {
         for _ in 0..500 {
             let slices: Vec<BadSlice> = (0..draw(12)).map(|_| draw(200)).map(|a| bad(a, a + a % 17)).collect();
             let gap = draw(20);
-            let near = |a: &BadSlice, b: &BadSlice| {
-                a.first_ms <= b.last_ms + gap && b.first_ms <= a.last_ms + gap
-            };
+            let near = |a: &BadSlice, b: &BadSlice| a.first_ms <= b.last_ms + gap && b.first_ms <= a.last_ms + gap;
             let mut group: Vec<usize> = (0..slices.len()).collect();
             for _ in 0..slices.len() {
                 for i in 0..slices.len() {

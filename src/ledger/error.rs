@@ -80,7 +80,9 @@ pub enum Error {
         condition: Box<Condition>,
     },
     /// An event that would not come back as it went in. Nothing was written, the journal goes on.
-    #[error("a {kind} record cannot be written to {path}: {because}; this is a fault of the program or of the core it runs on")]
+    #[error(
+        "a {kind} record cannot be written to {path}: {because}; this is a fault of the program or of the core it runs on"
+    )]
     Unrecordable {
         /// The path.
         path: PathBuf,

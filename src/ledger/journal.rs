@@ -108,7 +108,8 @@ impl Journal {
         if !salvaged.is_empty() {
             journal.name(&salvaged, wall_ms)?;
         }
-        let opening = Opening { created, salvaged, abandoned: intents.abandoned(), next_job: intents.next_job(), found };
+        let opening =
+            Opening { created, salvaged, abandoned: intents.abandoned(), next_job: intents.next_job(), found };
         Ok((journal, opening))
     }
 

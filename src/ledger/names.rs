@@ -39,9 +39,14 @@ mod tests {
         for number in [1, 2, 999_999, 1_000_000, u32::MAX] {
             assert_eq!(segment_number(&segment(number)), Some(number));
         }
-        for other in
-            ["segment-000000.jsonl", "segment-1.jsonl", "segment-0000001.jsonl", "segment-+00001.jsonl", "segment-000001.jsonl~", "x"]
-        {
+        for other in [
+            "segment-000000.jsonl",
+            "segment-1.jsonl",
+            "segment-0000001.jsonl",
+            "segment-+00001.jsonl",
+            "segment-000001.jsonl~",
+            "x",
+        ] {
             assert_eq!(segment_number(other), None, "{other}");
         }
     }

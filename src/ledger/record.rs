@@ -148,6 +148,12 @@ fn hash<'a>(bytes: &'a [u8], key: &[u8]) -> Option<(Digest, &'a [u8])> {
 }
 
 fn understand(body: &str) -> Result<Record, Because> {
+    // nearly all lines; read straight into its struct it takes half the time that the enum's detour takes
+    if body.starts_with(r#"{"kind":"slice","#)
+        && let Ok(slice) = serde_json::from_str(body)
+    {
+        return Ok(Record::Event(Event::Slice(slice)));
+    }
     let error = match serde_json::from_str(body) {
         Ok(event) => return Ok(Record::Event(event)),
         Err(error) => error,
@@ -193,7 +199,7 @@ mod tests {
     fn unknown_kinds_are_kept_and_known_ones_must_be_understood() {
         let unknown = decode(&line_of(r#"{"kind":"novelty","depth":[[1]]}"#)).unwrap();
         assert_eq!(unknown.record, Record::Unknown { kind: "novelty".into() });
-        for bad in [r#"{"kind":"remark"}"#, r#"{"x":1}"#, "[]", "", r#"{"kind":"novelty"} "#.trim_end_matches('}')] {
+        for bad in [r#"{"kind":"remark"}"#, r#"{"x":1}"#, "[]", "", r#"{"kind":"novelty""#] {
             assert!(matches!(decode(&line_of(bad)), Err(Because::Record(_))), "{bad}");
         }
     }
@@ -201,7 +207,8 @@ mod tests {
     #[test]
     fn deep_nesting_ends_neither_the_stack_nor_the_program() {
         let deep = "[".repeat(1 << 20);
-        for body in [format!("{{\"kind\":\"slice\",\"x\":{deep}"), format!("{{\"kind\":\"novelty\",\"x\":{deep}"), deep] {
+        for body in [format!("{{\"kind\":\"slice\",\"x\":{deep}"), format!("{{\"kind\":\"novelty\",\"x\":{deep}"), deep]
+        {
             assert!(matches!(decode(&line_of(&body)), Err(Because::Record(_))));
         }
     }
@@ -217,7 +224,13 @@ mod tests {
     fn other_spellings_of_the_same_json_are_refused() {
         let good = String::from_utf8(line_of(r#"{"kind":"remark","job_id":1,"wall_ms":2,"text":"x"}"#)).unwrap();
         decode(good.as_bytes()).unwrap();
-        for (from, to) in [("\"seq\":7", "\"seq\":07"), ("{\"v\"", "{ \"v\""), (",\"body\"", ", \"body\""), ("}}", "}} "), ("\"v\":1", "\"v\":01")] {
+        for (from, to) in [
+            ("\"seq\":7", "\"seq\":07"),
+            ("{\"v\"", "{ \"v\""),
+            (",\"body\"", ", \"body\""),
+            ("}}", "}} "),
+            ("\"v\":1", "\"v\":01"),
+        ] {
             let other = good.replacen(from, to, 1);
             assert_ne!(other, good);
             assert!(matches!(decode(other.as_bytes()), Err(Because::Layout(_))), "{other}");

@@ -1,0 +1,3 @@
+//! Everything that is tested from outside, one file a topic.
+
+mod ledger;
