@@ -54,6 +54,9 @@ fn torn_and_salvaged_v1() {
     let summary = verify(&data("torn")).unwrap();
     assert_eq!(summary.lines, 12);
     assert_eq!(summary.condition.to_string(), "torn tail: 100 bytes in segment-000002.jsonl from byte 1151");
+    let json = serde_json::to_value(&summary).unwrap();
+    assert_eq!(json["condition"]["state"], "torn_tail");
+    assert_eq!(json["condition"]["tails"][0]["bytes"], 100);
     let summary = verify(&data("salvaged")).unwrap();
     assert_eq!((summary.condition, summary.lines), (Condition::Clean, 14));
     let kept: Vec<_> = summary.kept_tails.iter().map(|t| (t.segment, t.bytes)).collect();
@@ -62,6 +65,9 @@ fn torn_and_salvaged_v1() {
 
 #[test]
 fn damaged_v1() {
+    let json = serde_json::to_value(verify(&data("broken")).unwrap()).unwrap();
+    assert_eq!(json["condition"]["state"], "broken");
+    assert_eq!(json["condition"]["because"], "the line says that it is seq 6");
     for (name, seq, because) in [("broken", 5, Because::Seq(6)), ("changed", 3, Because::BodyHash)] {
         let summary = verify(&data(name)).unwrap();
         assert_eq!(summary.lines, seq, "{name}");

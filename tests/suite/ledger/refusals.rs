@@ -25,6 +25,7 @@ fn file_in_the_way() {
     assert!(matches!(verify(&file), Err(Error::NotAFolder { .. })));
     assert!(matches!(refused(&file.join("below")), Error::NotAFolder { .. }));
     assert_eq!(fs::read_to_string(&file).unwrap(), "work of somebody");
+    assert!(matches!(refused(Path::new("")), Error::NotAFolder { .. }), "the current folder was not meant");
 }
 
 #[test]
@@ -71,6 +72,20 @@ fn second_writer_waits_outside() {
     assert_eq!(verify(&path).unwrap().lines, 1, "readers need no lock");
     drop(first);
     drop(Journal::open(&path, 1).unwrap());
+}
+
+/// A worker that outlives its supervisor must not keep the next start out.
+#[test]
+fn lock_is_not_inherited() {
+    let scratch = Scratch::new();
+    let path = scratch.at("ledger");
+    let (journal, _) = Journal::open(&path, 1).unwrap();
+    let mut worker = Command::new("sleep").arg("60").spawn().unwrap();
+    drop(journal);
+    let next = Journal::open(&path, 1).map(drop);
+    worker.kill().unwrap();
+    worker.wait().unwrap();
+    next.unwrap();
 }
 
 #[test]
