@@ -78,6 +78,8 @@ pub struct Assignment {
     pub core: u32,
     /// Slice number within the job.
     pub slice: u64,
+    /// Why.
+    pub purpose: Purpose,
     /// Kernel id.
     pub kernel: String,
     /// Variant name.

@@ -1,3 +1,8 @@
 //! The command `proofhouse`.
 
-fn main() {}
+use std::process::ExitCode;
+use std::time::Instant;
+
+fn main() -> ExitCode {
+    proofhouse::cli::run(Instant::now())
+}

@@ -1,0 +1,4 @@
+//! From a wrong output to a statement about a core: confirmation, then verdict.
+
+pub mod confirm;
+pub mod verdict;

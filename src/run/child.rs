@@ -1,0 +1,121 @@
+//! A worker as the supervisor's side sees it: a process, a thread that reads what it says, a thread that writes to it.
+
+use std::io::{self, BufReader, Write};
+use std::path::Path;
+use std::process::{Command, Stdio};
+use std::sync::mpsc::{Sender, channel};
+use std::time::{Duration, Instant};
+
+use nix::sys::signal::{Signal, kill};
+use nix::sys::wait::{WaitPidFlag, WaitStatus, waitpid};
+use nix::unistd::Pid;
+
+use super::protocol::{Message, Order, Received, receive};
+use crate::event::How;
+use crate::host::Cpu;
+
+/// What a child's reader hands on: cpu, which of its workers, what.
+pub type Heard = (Cpu, u64, Received<Message>);
+
+/// One worker process.
+pub struct Child {
+    pid: Pid,
+    /// Tells this worker from earlier ones of the same cpu.
+    pub generation: u64,
+    orders: Sender<Vec<u8>>,
+    ended: Option<How>,
+}
+
+impl Child {
+    /// Starts `program worker --cpu N`.
+    pub fn start(program: &Path, cpu: Cpu, generation: u64, hear: Sender<Heard>) -> io::Result<Child> {
+        let mut process = Command::new(program)
+            .args(["worker", "--cpu", &cpu.to_string()])
+            .stdin(Stdio::piped())
+            .stdout(Stdio::piped())
+            // a worker's last words are no part of the report; its exit status is
+            .stderr(Stdio::null())
+            .spawn()?;
+        let pid = Pid::from_raw(process.id() as i32);
+        let (orders, queue) = channel::<Vec<u8>>();
+        let gone = || io::Error::other("no pipe to the worker");
+        let mut input = process.stdin.take().ok_or_else(gone)?;
+        let output = process.stdout.take().ok_or_else(gone)?;
+        std::thread::spawn(move || {
+            for line in queue {
+                // a worker that does not read any more is noticed by its end or its deadline
+                if input.write_all(&line).and_then(|()| input.flush()).is_err() {
+                    return;
+                }
+            }
+        });
+        std::thread::spawn(move || {
+            let mut output = BufReader::new(output);
+            loop {
+                let heard = receive(&mut output);
+                let last = matches!(heard, Received::End);
+                if hear.send((cpu, generation, heard)).is_err() || last {
+                    return;
+                }
+            }
+        });
+        Ok(Child { pid, generation, orders, ended: None })
+    }
+
+    /// Queues an order.
+    pub fn order(&self, order: &Order) {
+        if let Ok(mut line) = serde_json::to_vec(order) {
+            line.push(b'\n');
+            // the writer is gone only when the worker is, which is noticed elsewhere
+            let _ = self.orders.send(line);
+        }
+    }
+
+    /// Looks for a change of state: `Some(true)` stopped from outside, `Some(false)` goes on.
+    pub fn look(&mut self) -> Option<bool> {
+        if self.ended.is_some() {
+            return None;
+        }
+        let flags = WaitPidFlag::WNOHANG | WaitPidFlag::WUNTRACED | WaitPidFlag::WCONTINUED;
+        match waitpid(self.pid, Some(flags)) {
+            Ok(WaitStatus::Stopped(..)) => Some(true),
+            Ok(WaitStatus::Continued(_)) => Some(false),
+            Ok(status) => {
+                self.note(status);
+                None
+            }
+            Err(_) => None,
+        }
+    }
+
+    fn note(&mut self, status: WaitStatus) {
+        match status {
+            WaitStatus::Exited(_, code) => self.ended = Some(How::Exit(code)),
+            WaitStatus::Signaled(_, signal, _) => self.ended = Some(How::Signal(signal as i32)),
+            _ => {}
+        }
+    }
+
+    /// How it ended, once its pipe has closed; one that closed its pipe and lives on is killed.
+    pub fn end(mut self) -> How {
+        let patience = Instant::now() + Duration::from_millis(300);
+        while self.ended.is_none() && Instant::now() < patience {
+            self.look();
+            std::thread::sleep(Duration::from_millis(1));
+        }
+        self.ended.take().unwrap_or_else(|| {
+            self.kill();
+            How::Babbled("closed its output and lived on".to_owned())
+        })
+    }
+
+    /// Ends it at once and leaves no zombie, even where it takes the kernel a while.
+    pub fn kill(mut self) {
+        if self.ended.is_none() {
+            let _ = kill(self.pid, Signal::SIGKILL);
+            let pid = self.pid;
+            self.ended = Some(How::Signal(Signal::SIGKILL as i32));
+            std::thread::spawn(move || waitpid(pid, None));
+        }
+    }
+}

@@ -1,0 +1,507 @@
+//! The supervisor: a state machine without IO. It is fed (time, what happened) and answers with actions, so that a
+//! simulation can play whole windows, with any fault at any point, in microseconds.
+//!
+//! Each cpu has at most two slices with its worker: the one under way and the next, so that a core never waits for
+//! the disk. An intent is recorded before each order. The shares of time are worked out when a slice is ordered, so
+//! lateness anywhere is made up by all later slices and the window ends on its budget.
+
+use std::collections::BTreeMap;
+use std::time::Duration;
+
+use super::lane::{Flight, Lane, Worker};
+use super::protocol::{Message, Order, SliceReport, WrongOutput};
+use super::spec::{Action, FoldTask, Input, Now, Opinion, Request, Setup, Truth};
+use crate::event::{
+    Assignment, Ending, Event, FoldCheck, How, Intent, Lost, Mismatch, NoticedBy, Remark, Slice, WrongWord,
+};
+use crate::host::Cpu;
+
+/// Kept free at the end of the budget for last answers and the closing record.
+const TAIL: Duration = Duration::from_millis(120);
+/// A slice shorter than this says nothing worth its record.
+const SHORTEST: Duration = Duration::from_millis(4);
+/// A worker that is not ready by then was not started.
+const READY_WITHIN: Duration = Duration::from_secs(10);
+/// After a halt, answers are waited for this long.
+const HALT_WITHIN: Duration = Duration::from_millis(400);
+
+/// See the file's head.
+pub struct Supervisor {
+    setup: Setup,
+    truth: Box<dyn Truth>,
+    lanes: BTreeMap<Cpu, Lane>,
+    next_slice: u64,
+    ending: Option<(Ending, Duration)>,
+    finished: bool,
+    actions: Vec<Action>,
+}
+
+impl Supervisor {
+    /// A supervisor for one job; the first actions start the workers.
+    pub fn new(setup: Setup, truth: Box<dyn Truth>) -> Supervisor {
+        let lanes = setup.tracks.iter().map(|t| (t.cpu, Lane::new(t))).collect();
+        Supervisor { setup, truth, lanes, next_slice: 0, ending: None, finished: false, actions: Vec::new() }
+    }
+
+    /// Starts every worker.
+    pub fn begin(&mut self, now: Now) -> Vec<Action> {
+        for lane in self.lanes.values_mut() {
+            lane.worker = Worker::Starting(now.at);
+            self.actions.push(Action::Start(lane.cpu));
+        }
+        std::mem::take(&mut self.actions)
+    }
+
+    /// Takes in what happened and answers with what is to be done, in order.
+    pub fn feed(&mut self, now: Now, input: Input) -> Vec<Action> {
+        if self.finished {
+            return Vec::new();
+        }
+        match input {
+            Input::Said(cpu, message) => self.said(now, cpu, message),
+            Input::Babbled(cpu, text) => {
+                self.lose(now, cpu, How::Babbled(text));
+                self.actions.push(Action::Kill(cpu));
+            }
+            Input::Gone(cpu, how) => self.gone(now, cpu, how),
+            Input::Stopped(cpu, stopped) => {
+                if let Some(lane) = self.lanes.get_mut(&cpu) {
+                    lane.stopped = stopped;
+                }
+            }
+            Input::Checked(opinion) => self.checked(now, opinion),
+            Input::Wanted(requests) => self.wanted(requests),
+            Input::Interrupt => self.halt(now, Ending::Signal),
+            Input::DiskFailed => self.halt(now, Ending::Failed),
+            Input::Tick => {}
+        }
+        self.advance(now);
+        std::mem::take(&mut self.actions)
+    }
+
+    /// Time of the next deadline, for the driver to wait until.
+    pub fn next_deadline(&self) -> Duration {
+        let lanes = self.lanes.values().filter_map(|l| l.deadline(self.setup.grace, READY_WITHIN));
+        let end = self.ending.map_or(self.setup.budget, |(_, since)| since + HALT_WITHIN);
+        lanes.chain([end]).min().unwrap_or(end)
+    }
+
+    /// Part of the job that is over, by time and by slices, whichever is further: for a progress bar.
+    pub fn progress(&self, at: Duration) -> f64 {
+        (at.as_secs_f64() / self.setup.budget.as_secs_f64()).min(1.0)
+    }
+
+    /// Slices that are still to come.
+    pub fn slices_left(&self) -> usize {
+        self.lanes.values().map(|l| l.planned.len() + l.urgent.len() + l.flights.len()).sum()
+    }
+
+    fn remark(&mut self, now: Now, text: String) {
+        let remark = Remark { job_id: self.setup.job_id, wall_ms: now.wall_ms, text };
+        self.actions.push(Action::Record(Event::Remark(remark)));
+    }
+
+    fn said(&mut self, now: Now, cpu: Cpu, message: Message) {
+        let Some(lane) = self.lanes.get_mut(&cpu) else { return };
+        match message {
+            Message::Ready { place } => {
+                if place.is_only(cpu) {
+                    lane.worker = Worker::Up;
+                } else {
+                    let how =
+                        How::NotPinned(format!("asked for cpu {cpu}, is on cpu {} of {:?}", place.cpu, place.mask));
+                    self.lose(now, cpu, how);
+                    self.actions.push(Action::Kill(cpu));
+                }
+            }
+            Message::Begun { slice } => match lane.flights.iter_mut().find(|f| f.slice == slice) {
+                Some(flight) => {
+                    flight.begun = Some(now.at);
+                    flight.wall_ms = now.wall_ms;
+                    lane.stopped = false;
+                }
+                None => self.babbled(now, cpu, format!("began slice {slice}, which it was not ordered")),
+            },
+            Message::Wrong(wrong) => self.wrong(now, cpu, wrong),
+            Message::Ended(report) => self.ended(now, cpu, report),
+            Message::Refused { slice, why } => {
+                if let Some(flight) = lane.take_flight(slice, now.at) {
+                    self.close_void(now, cpu, &flight, format!("refused by the worker: {why}"));
+                } else {
+                    self.lose(now, cpu, How::NotPinned(why));
+                    self.actions.push(Action::Kill(cpu));
+                }
+            }
+        }
+    }
+
+    fn babbled(&mut self, now: Now, cpu: Cpu, text: String) {
+        self.lose(now, cpu, How::Babbled(text));
+        self.actions.push(Action::Kill(cpu));
+    }
+
+    fn wrong(&mut self, now: Now, cpu: Cpu, wrong: WrongOutput) {
+        let neighbours = self.neighbours(cpu);
+        let Some(lane) = self.lanes.get_mut(&cpu) else { return };
+        let Some(flight) = lane.flights.iter().find(|f| f.slice == wrong.slice) else {
+            return self.babbled(
+                now,
+                cpu,
+                format!("a wrong output in slice {}, which it was not ordered", wrong.slice),
+            );
+        };
+        if !wrong.place.is_only(cpu) {
+            let text = format!(
+                "a wrong output of {} was seen while the worker of cpu {cpu} ran on cpu {}: blamed on nobody",
+                flight.spec.kernel, wrong.place.cpu
+            );
+            return self.remark(now, text);
+        }
+        let words = wrong.first.iter().map(|&(i, e, a)| WrongWord::new(i as usize, e, a)).collect();
+        let mismatch = Mismatch {
+            job_id: self.setup.job_id,
+            job: self.setup.job,
+            slice: wrong.slice,
+            purpose: flight.spec.purpose,
+            cpu,
+            core: lane.core,
+            kernel: flight.spec.kernel.to_owned(),
+            variant: flight.spec.variant.to_string(),
+            seed: Some(wrong.seed),
+            size: flight.spec.size.0,
+            condition: flight.condition.clone(),
+            wall_ms: wrong.wall_ms,
+            run: wrong.run,
+            noticed_by: NoticedBy::Comparison,
+            wrong_words: wrong.wrong_words,
+            words,
+            previous_kernel: lane.previous_kernel.map(str::to_owned),
+            neighbours,
+            surroundings: now.surroundings,
+        };
+        self.actions.push(Action::Record(Event::Mismatch(mismatch)));
+    }
+
+    fn neighbours(&self, cpu: Cpu) -> Vec<(Cpu, String)> {
+        let busy = self.lanes.values().filter(|l| l.cpu != cpu);
+        busy.filter_map(|l| l.under_way().map(|f| (l.cpu, f.spec.kernel.to_owned()))).collect()
+    }
+
+    fn ended(&mut self, now: Now, cpu: Cpu, report: SliceReport) {
+        let Some(lane) = self.lanes.get_mut(&cpu) else { return };
+        let Some(mut flight) = lane.take_flight(report.slice, now.at) else {
+            return self.babbled(now, cpu, format!("ended slice {}, which it was not ordered", report.slice));
+        };
+        if let Err(why) = flight.plausible(&report) {
+            lane.flights.push_front(flight);
+            return self.babbled(now, cpu, why);
+        }
+        lane.previous_kernel = Some(flight.spec.kernel);
+        if report.cases.iter().all(|c| c.runs == 0) {
+            return self.close_void(now, cpu, &flight, "given up before its first run".to_owned());
+        }
+        let cases = report
+            .cases
+            .iter()
+            .zip(&flight.expected)
+            .map(|(case, expected)| (expected.clone(), case.runs - case.wrong, case.fold))
+            .collect();
+        flight.surroundings = now.surroundings;
+        self.actions.push(Action::Check(FoldTask { slice: report.slice, of: cpu, cases }));
+        lane.checking.push((flight, report));
+    }
+
+    fn checked(&mut self, now: Now, opinion: Opinion) {
+        let Some(lane) = self.lanes.get_mut(&opinion.of) else { return };
+        let Some(index) = lane.checking.iter().position(|(f, _)| f.slice == opinion.slice) else { return };
+        let (flight, report) = lane.checking.remove(index);
+        let void = [&report.places.0, &report.places.1].iter().find(|p| !p.is_only(lane.cpu)).map(|p| {
+            format!("the worker was on cpu {} with mask {:?} instead of cpu {} alone", p.cpu, p.mask, lane.cpu)
+        });
+        let core = lane.core;
+        if let Some(text) = opinion.remark {
+            self.remark(now, text);
+        }
+        if void.is_none() {
+            for &position in &opinion.wrong {
+                self.folded_wrong(&flight, &report, core, position, opinion.of);
+            }
+        }
+        let wrong: u64 = report.cases.iter().map(|c| c.wrong).sum();
+        // a wrong fold is at least one wrong output
+        let unseen = opinion.wrong.len() as u64;
+        let runs: u64 = report.cases.iter().map(|c| c.runs).sum();
+        let late = (!opinion.wrong.is_empty()).then_some((flight.wall_ms, flight.wall_ms));
+        let slice = Slice {
+            job_id: self.setup.job_id,
+            slice: flight.slice,
+            job: self.setup.job,
+            purpose: flight.spec.purpose,
+            cpu: opinion.of,
+            core,
+            kernel: flight.spec.kernel.to_owned(),
+            variant: flight.spec.variant.to_string(),
+            condition: flight.condition.clone(),
+            wall_ms: flight.wall_ms,
+            span_ns: report.span_ns,
+            busy_ns: report.busy_ns,
+            cases: report.cases.len() as u64,
+            runs,
+            operations: runs.saturating_mul(flight.work.amount),
+            unit: flight.work.unit.to_owned(),
+            mismatches: wrong + unseen,
+            mismatch_ms: report.wrong_ms.or(late),
+            fold: match opinion.on {
+                None => FoldCheck::NotChecked,
+                Some(_) if unseen > 0 => FoldCheck::Wrong,
+                Some(_) => FoldCheck::Right,
+            },
+            checked_on: opinion.on,
+            void,
+            surroundings: flight.surroundings,
+        };
+        self.actions.push(Action::Record(Event::Slice(slice)));
+    }
+
+    fn folded_wrong(&mut self, flight: &Flight, report: &SliceReport, core: u32, position: usize, cpu: Cpu) {
+        let mismatch = Mismatch {
+            job_id: self.setup.job_id,
+            job: self.setup.job,
+            slice: flight.slice,
+            purpose: flight.spec.purpose,
+            cpu,
+            core,
+            kernel: flight.spec.kernel.to_owned(),
+            variant: flight.spec.variant.to_string(),
+            seed: report.cases.get(position).map(|c| c.seed),
+            size: flight.spec.size.0,
+            condition: flight.condition.clone(),
+            wall_ms: flight.wall_ms,
+            run: 0,
+            noticed_by: NoticedBy::Fold,
+            wrong_words: 0,
+            words: Vec::new(),
+            previous_kernel: None,
+            neighbours: self.neighbours(cpu),
+            surroundings: flight.surroundings,
+        };
+        self.actions.push(Action::Record(Event::Mismatch(mismatch)));
+    }
+
+    /// Records that nothing can be concluded from a slice; this also settles its intent.
+    fn close_void(&mut self, now: Now, cpu: Cpu, flight: &Flight, why: String) {
+        let core = self.lanes.get(&cpu).map_or(0, |l| l.core);
+        let slice = Slice {
+            job_id: self.setup.job_id,
+            slice: flight.slice,
+            job: self.setup.job,
+            purpose: flight.spec.purpose,
+            cpu,
+            core,
+            kernel: flight.spec.kernel.to_owned(),
+            variant: flight.spec.variant.to_string(),
+            condition: flight.condition.clone(),
+            wall_ms: now.wall_ms,
+            span_ns: 0,
+            busy_ns: 0,
+            cases: 0,
+            runs: 0,
+            operations: 0,
+            unit: flight.work.unit.to_owned(),
+            mismatches: 0,
+            mismatch_ms: None,
+            fold: FoldCheck::NotChecked,
+            checked_on: None,
+            void: Some(why),
+            surroundings: now.surroundings,
+        };
+        self.actions.push(Action::Record(Event::Slice(slice)));
+    }
+
+    fn gone(&mut self, now: Now, cpu: Cpu, how: How) {
+        let Some(lane) = self.lanes.get_mut(&cpu) else { return };
+        match lane.worker {
+            // it was told to go, or its loss is on record already
+            Worker::Down | Worker::GivenUp => {}
+            _ => self.lose(now, cpu, how),
+        }
+    }
+
+    /// Records the loss of a worker against its core, and settles every intent it had.
+    fn lose(&mut self, now: Now, cpu: Cpu, how: How) {
+        let ending = self.ending.is_some();
+        let Some(lane) = self.lanes.get_mut(&cpu) else { return };
+        lane.losses += 1;
+        lane.worker = if lane.losses >= self.setup.losses_borne || ending { Worker::GivenUp } else { Worker::Down };
+        lane.stopped = false;
+        let core = lane.core;
+        let mut flights = std::mem::take(&mut lane.flights).into_iter();
+        let given_up = lane.worker == Worker::GivenUp && !ending;
+        if let Some(flight) = flights.next() {
+            self.actions.push(Action::Record(Event::Lost(Lost {
+                job_id: self.setup.job_id,
+                job: self.setup.job,
+                slice: flight.slice,
+                cpu,
+                core,
+                kernel: flight.spec.kernel.to_owned(),
+                variant: flight.spec.variant.to_string(),
+                condition: flight.condition.clone(),
+                wall_ms: now.wall_ms,
+                how,
+            })));
+        } else {
+            self.remark(now, format!("the worker of cpu {cpu} {how} while it had no work"));
+        }
+        for flight in flights {
+            self.close_void(now, cpu, &flight, "its worker was lost before it began".to_owned());
+        }
+        if given_up {
+            self.remark(now, format!("cpu {cpu} is left alone after {} lost workers", self.setup.losses_borne));
+        }
+    }
+
+    fn wanted(&mut self, requests: Vec<Request>) {
+        for Request { cpu, spec } in requests {
+            if let Some(lane) = self.lanes.get_mut(&cpu) {
+                lane.urgent.push_back(spec);
+            }
+        }
+    }
+
+    fn halt(&mut self, now: Now, ending: Ending) {
+        if self.ending.is_some() {
+            return;
+        }
+        self.ending = Some((ending, now.at));
+        for lane in self.lanes.values_mut() {
+            lane.planned.clear();
+            lane.urgent.clear();
+            if ending == Ending::Failed {
+                // without a ledger nothing may go on, and nothing can be recorded
+                lane.flights.clear();
+                lane.worker = Worker::GivenUp;
+                self.actions.push(Action::Kill(lane.cpu));
+            } else if let Some(last) = lane.flights.back() {
+                self.actions.push(Action::Order(lane.cpu, Order::Halt { upto: last.slice }));
+            }
+        }
+    }
+
+    /// Deadlines, restarts, new orders, the end.
+    fn advance(&mut self, now: Now) {
+        let cpus: Vec<Cpu> = self.lanes.keys().copied().collect();
+        for cpu in cpus {
+            self.overdue(now, cpu);
+            self.restart(now, cpu);
+            while self.order_next(now, cpu) {}
+        }
+        if now.at >= self.setup.budget {
+            self.halt(now, Ending::Budget);
+        }
+        let still = self.lanes.values().any(Lane::busy);
+        let nothing_left = self.lanes.values().all(|l| l.worker == Worker::GivenUp || l.idle());
+        let (ending, forced) = match self.ending {
+            Some((ending, since)) => (Some(ending), now.at >= since + HALT_WITHIN),
+            None if nothing_left => (Some(Ending::Done), false),
+            None => (None, false),
+        };
+        if let Some(ending) = ending
+            && (!still || forced)
+        {
+            self.finish(now, ending);
+        }
+    }
+
+    fn finish(&mut self, now: Now, ending: Ending) {
+        let cpus: Vec<Cpu> = self.lanes.keys().copied().collect();
+        for cpu in cpus {
+            let Some(lane) = self.lanes.get_mut(&cpu) else { continue };
+            let flights = std::mem::take(&mut lane.flights);
+            let unchecked = std::mem::take(&mut lane.checking);
+            lane.worker = Worker::GivenUp;
+            self.actions.push(Action::Kill(cpu));
+            for flight in flights {
+                self.close_void(now, cpu, &flight, "cut off at the end of the job".to_owned());
+            }
+            for (flight, _) in unchecked {
+                self.close_void(now, cpu, &flight, "the second opinion came too late".to_owned());
+            }
+        }
+        self.finished = true;
+        self.actions.push(Action::Finish(ending));
+    }
+
+    fn overdue(&mut self, now: Now, cpu: Cpu) {
+        let grace = self.setup.grace;
+        let Some(lane) = self.lanes.get(&cpu) else { return };
+        if lane.deadline(grace, READY_WITHIN).is_none_or(|deadline| now.at < deadline) {
+            return;
+        }
+        let how = match lane.worker {
+            Worker::Starting(_) => How::NotStarted("not ready in time".to_owned()),
+            _ if lane.stopped => How::Stopped,
+            _ => How::Hung,
+        };
+        self.lose(now, cpu, how);
+        self.actions.push(Action::Kill(cpu));
+    }
+
+    fn restart(&mut self, now: Now, cpu: Cpu) {
+        let Some(lane) = self.lanes.get_mut(&cpu) else { return };
+        let wanted = !lane.planned.is_empty() || !lane.urgent.is_empty();
+        if lane.worker == Worker::Down && wanted && self.ending.is_none() {
+            lane.worker = Worker::Starting(now.at);
+            self.actions.push(Action::Start(cpu));
+        }
+    }
+
+    /// Orders one more slice if the cpu can take one; true if it did.
+    fn order_next(&mut self, now: Now, cpu: Cpu) -> bool {
+        let end = self.setup.budget.saturating_sub(TAIL);
+        let longest = self.setup.longest;
+        let Some(lane) = self.lanes.get_mut(&cpu) else { return false };
+        if self.ending.is_some() || !lane.can_take() {
+            return false;
+        }
+        let start = lane.free_at(now.at);
+        let left = end.saturating_sub(start);
+        if left < SHORTEST {
+            lane.planned.clear();
+            lane.urgent.clear();
+            return false;
+        }
+        let Some((spec, span)) = lane.next(left, longest) else { return false };
+        let slice = self.next_slice;
+        self.next_slice += 1;
+        let condition = format!("{} {}KiB", self.setup.arrangement, spec.size.0);
+        let mut flight = match Flight::new(slice, spec, span, condition, self.truth.as_ref()) {
+            Ok(flight) => flight,
+            Err(why) => {
+                self.remark(now, why);
+                return true;
+            }
+        };
+        let assignment = Assignment {
+            cpu,
+            core: lane.core,
+            slice,
+            purpose: flight.spec.purpose,
+            kernel: flight.spec.kernel.to_owned(),
+            variant: flight.spec.variant.to_string(),
+            condition: flight.condition.clone(),
+        };
+        flight.ordered = now.at;
+        let order = flight.order();
+        lane.flights.push_back(flight);
+        let intent = Intent {
+            job_id: self.setup.job_id,
+            job: self.setup.job,
+            wall_ms: now.wall_ms,
+            assignments: vec![assignment],
+        };
+        self.actions.push(Action::Record(Event::Intent(intent)));
+        self.actions.push(Action::Order(cpu, Order::Slice(order)));
+        true
+    }
+}

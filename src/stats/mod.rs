@@ -1,0 +1,38 @@
+//! Pure numbers: counts and times in, estimates with honest limits out. Knows no core, kernel or ledger.
+//!
+//! Exact methods stay exact from one run to 10^12 runs and from confidence 0.5 to 1 − 10⁻⁹; `scripts/check-stats.py`
+//! measures that against independent implementations.
+//!
+//! | question | calculator |
+//! |---|---|
+//! | how likely is a mismatch per run? | [`clopper_pearson`], [`mid_p`], [`wilson`], [`exact_test`] |
+//! | how many per hour? | [`garwood`], [`mid_p_rate`] |
+//! | what does silence prove, how long must it last? | [`upper_per_run`], [`upper_rate`], [`exposure_needed`], [`success_runs`], [`demonstration_runs`], [`mtbf`], [`fit_rate`] |
+//! | is this core worse than that one? | [`compare_rates`], [`rate_ratio`], [`fisher_exact`], [`odds_ratio`] |
+//! | do failures cluster? | [`episodes()`], [`dispersion()`] |
+//! | what of many tests at once? | [`holm`], [`benjamini_hochberg`] |
+
+mod binomial;
+mod compare;
+mod dispersion;
+mod episodes;
+mod fisher;
+mod interval;
+mod law;
+mod multiple;
+mod numerics;
+mod poisson;
+mod zero_failure;
+
+pub use binomial::{clopper_pearson, clopper_pearson_lower, clopper_pearson_upper, exact_test, mid_p, wilson};
+pub use compare::{Observed, RateTest, compare_rates, rate_ratio};
+pub use dispersion::{Dispersion, dispersion, dispersion_with_exposure};
+pub use episodes::{Episode, episodes};
+pub use fisher::{FisherTest, fisher_exact, odds_ratio, odds_ratio_lower};
+pub use interval::{Interval, StatsError};
+pub use multiple::{benjamini_hochberg, bonferroni, hochberg, holm, rejections};
+pub use poisson::{garwood, garwood_lower, garwood_upper, mid_p_rate};
+pub use zero_failure::{
+    demonstration_runs, exposure_needed, fit_rate, mtbf, rule_of_three, success_runs, test_length_factor,
+    upper_per_run, upper_rate,
+};

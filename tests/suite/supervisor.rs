@@ -1,0 +1,376 @@
+//! Whole windows in microseconds: the supervisor as it ships, over a simulated clock and simulated workers that are
+//! right, wrong, blind, crash, hang, babble, are moved or stopped at random instants. A failing seed replays for ever.
+
+use std::cmp::Reverse;
+use std::collections::{BTreeMap, BTreeSet, BinaryHeap};
+use std::time::Duration;
+
+use kernels::compare::{Fold, digest};
+use kernels::{Case, Size, Variant};
+use proofhouse::event::{Ending, Event, How, Job, Purpose, Surroundings};
+use proofhouse::host::Cpu;
+use proofhouse::run::pinning::Place;
+use proofhouse::run::protocol::{CaseReport, Message, Order, SliceOrder, SliceReport, WrongOutput};
+use proofhouse::run::spec::{Action, FoldTask, Input, Now, Opinion, Setup, Span, Spec, Track, Truth};
+use proofhouse::run::supervisor::Supervisor;
+use rand_chacha::ChaCha12Rng;
+use rand_chacha::rand_core::{Rng, SeedableRng};
+
+const BUDGET: Duration = Duration::from_secs(20);
+const KERNEL: &str = "integer.multiply";
+
+struct Words;
+
+impl Truth for Words {
+    fn expected(&self, case: &Case) -> Option<Vec<u64>> {
+        Some(vec![case.seed.0, 2, 3])
+    }
+}
+
+/// What a simulated worker does with a slice.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+enum Deed {
+    Right,
+    Wrong,
+    Blind,
+    Crash,
+    Hang,
+    Babble,
+    Moved,
+    Stop,
+    ForeignReport,
+}
+
+struct World {
+    rng: ChaCha12Rng,
+    at: Duration,
+    supervisor: Supervisor,
+    // time, tie-break, what; old generations' news are dropped as the driver drops them
+    queue: BinaryHeap<Reverse<(Duration, u64, u64, NewsKey)>>,
+    news: BTreeMap<u64, (Cpu, Input)>,
+    ticks: u64,
+    generation: BTreeMap<Cpu, u64>,
+    worker_free: BTreeMap<Cpu, Duration>,
+    events: Vec<Event>,
+    ended: Option<(Ending, Duration)>,
+    deeds: BTreeMap<Deed, u64>,
+    faulty: BTreeSet<Cpu>,
+    disk_fails_at: Option<Duration>,
+    disk_failed: bool,
+    halted: BTreeMap<Cpu, u64>,
+}
+
+type NewsKey = (u32, u64);
+
+impl World {
+    fn now(&self) -> Now {
+        Now { at: self.at, wall_ms: 1_000_000 + self.at.as_millis() as u64, surroundings: Surroundings::default() }
+    }
+
+    fn chance(&mut self, one_in: u64) -> bool {
+        self.rng.next_u64().is_multiple_of(one_in)
+    }
+
+    fn schedule(&mut self, after: Duration, cpu: Cpu, input: Input) {
+        self.ticks += 1;
+        let generation = self.generation.get(&cpu).copied().unwrap_or(0);
+        self.queue.push(Reverse((self.at + after, self.ticks, 0, (cpu.0, generation))));
+        self.news.insert(self.ticks, (cpu, input));
+    }
+
+    fn here(cpu: Cpu) -> Place {
+        Place { cpu, mask: vec![cpu] }
+    }
+
+    fn work(&mut self, cpu: Cpu, order: SliceOrder) {
+        let free = self.worker_free.get(&cpu).copied().unwrap_or(self.at).max(self.at);
+        let wait = free - self.at + Duration::from_micros(100);
+        let span = Duration::from_nanos(order.span_ns);
+        let deed = match (self.faulty.contains(&cpu), self.rng.next_u64() % 12) {
+            (false, _) => Deed::Right,
+            (true, 0) => Deed::Crash,
+            (true, 1) => Deed::Hang,
+            (true, 2) => Deed::Babble,
+            (true, 3) => Deed::Moved,
+            (true, 4) => Deed::Stop,
+            (true, 5) => Deed::ForeignReport,
+            (true, 6 | 7) => Deed::Blind,
+            (true, 8 | 9) => Deed::Wrong,
+            (true, _) => Deed::Right,
+        };
+        *self.deeds.entry(deed).or_default() += 1;
+        self.schedule(wait, cpu, Input::Said(cpu, Message::Begun { slice: order.slice }));
+        let middle = wait + span / 2;
+        let place = if deed == Deed::Moved { World::here(Cpu(cpu.0 + 1)) } else { World::here(cpu) };
+        match deed {
+            Deed::Crash => return self.schedule(middle, cpu, Input::Gone(cpu, How::Signal(11))),
+            Deed::Hang => return,
+            Deed::Stop => return self.schedule(middle, cpu, Input::Stopped(cpu, true)),
+            Deed::Babble => self.schedule(middle, cpu, Input::Babbled(cpu, "?".into())),
+            Deed::Wrong | Deed::Moved => {
+                let wrong = WrongOutput {
+                    slice: order.slice,
+                    seed: order.cases[0].seed,
+                    run: 3,
+                    wall_ms: 1_000_000,
+                    wrong_words: 1,
+                    first: vec![(0, 1, 9)],
+                    place: place.clone(),
+                };
+                self.schedule(middle, cpu, Input::Said(cpu, Message::Wrong(wrong)));
+            }
+            _ => {}
+        }
+        let cases = order
+            .cases
+            .iter()
+            .map(|c| {
+                let wrong = u64::from(matches!(deed, Deed::Wrong | Deed::Moved) && c.seed == order.cases[0].seed);
+                let mut fold = Fold::default();
+                fold.push_digest(digest(&[c.seed, 2, 3]), 100 - wrong);
+                if deed == Deed::Blind {
+                    fold.0 ^= 1;
+                }
+                let seed = if deed == Deed::ForeignReport { c.seed + 1000 } else { c.seed };
+                CaseReport { seed, runs: 100, wrong, fold: fold.0 }
+            })
+            .collect();
+        let report = SliceReport {
+            slice: order.slice,
+            span_ns: order.span_ns,
+            busy_ns: order.span_ns * 99 / 100,
+            cases,
+            wrong_ms: (deed == Deed::Wrong).then_some((1_000_000, 1_000_000)),
+            places: (World::here(cpu), place),
+        };
+        self.worker_free.insert(cpu, self.at + wait + span);
+        self.schedule(wait + span, cpu, Input::Said(cpu, Message::Ended(report)));
+    }
+
+    fn opinion(task: &FoldTask) -> Opinion {
+        let wrong = task
+            .cases
+            .iter()
+            .enumerate()
+            .filter(|(_, (expected, outputs, fold))| {
+                let mut right = Fold::default();
+                right.push_digest(digest(expected), *outputs);
+                right.0 != *fold
+            })
+            .map(|(i, _)| i)
+            .collect();
+        Opinion { slice: task.slice, of: task.of, on: Some(Cpu(99)), wrong, remark: None }
+    }
+
+    fn carry_out(&mut self, actions: Vec<Action>) {
+        for action in actions {
+            match action {
+                Action::Start(cpu) => {
+                    *self.generation.entry(cpu).or_default() += 1;
+                    self.worker_free.remove(&cpu);
+                    let ready = Input::Said(cpu, Message::Ready { place: World::here(cpu) });
+                    self.schedule(Duration::from_millis(2), cpu, ready);
+                }
+                Action::Order(..) | Action::Record(_) if self.disk_failed => {}
+                Action::Order(cpu, Order::Slice(order)) => self.work(cpu, order),
+                Action::Order(cpu, Order::Halt { upto }) => {
+                    self.halted.insert(cpu, upto);
+                }
+                Action::Kill(cpu) => {
+                    *self.generation.entry(cpu).or_default() += 1;
+                }
+                Action::Check(task) => {
+                    let of = task.of;
+                    self.schedule(Duration::from_micros(300), of, Input::Checked(World::opinion(&task)));
+                }
+                Action::Record(event) => {
+                    if self.disk_fails_at.is_some_and(|at| self.at >= at) {
+                        self.disk_failed = true;
+                        let now = self.now();
+                        let more = self.supervisor.feed(now, Input::DiskFailed);
+                        self.carry_out(more);
+                    } else {
+                        self.events.push(event);
+                    }
+                }
+                Action::Finish(ending) => self.ended = Some((ending, self.at)),
+            }
+        }
+    }
+
+    fn play(&mut self) {
+        let now = self.now();
+        let first = self.supervisor.begin(now);
+        self.carry_out(first);
+        let interrupt = self.chance(10).then(|| Duration::from_millis(self.rng.next_u64() % 20_000));
+        let mut interrupted = false;
+        for _ in 0..1_000_000 {
+            if self.ended.is_some() {
+                return;
+            }
+            let next = self.queue.peek().map_or(Duration::MAX, |Reverse((at, ..))| *at);
+            let wait = self.supervisor.next_deadline().min(next).min(self.at + Duration::from_millis(20));
+            self.at = wait.max(self.at);
+            if let Some(at) = interrupt
+                && !interrupted
+                && self.at >= at
+            {
+                interrupted = true;
+                let now = self.now();
+                let actions = self.supervisor.feed(now, Input::Interrupt);
+                self.carry_out(actions);
+                continue;
+            }
+            let input = match self.queue.peek() {
+                Some(Reverse((at, tick, _, (cpu, generation)))) if *at <= self.at => {
+                    let (tick, cpu, generation) = (*tick, Cpu(*cpu), *generation);
+                    self.queue.pop();
+                    let (_, input) = self.news.remove(&tick).unwrap();
+                    let current = self.generation.get(&cpu).copied().unwrap_or(0);
+                    if generation != current && !matches!(input, Input::Checked(_)) {
+                        continue;
+                    }
+                    input
+                }
+                _ => Input::Tick,
+            };
+            let now = self.now();
+            let actions = self.supervisor.feed(now, input);
+            self.carry_out(actions);
+        }
+        panic!(
+            "the window never ended: at {:?}, next deadline {:?}, {} slices left, {} news",
+            self.at,
+            self.supervisor.next_deadline(),
+            self.supervisor.slices_left(),
+            self.queue.len()
+        );
+    }
+}
+
+fn world(seed: u64) -> World {
+    let mut rng = ChaCha12Rng::seed_from_u64(seed);
+    let cpus = 1 + (rng.next_u64() % 6) as u32;
+    let spec = |n: u64| Spec {
+        purpose: Purpose::Plan,
+        kernel: KERNEL,
+        variant: Variant::Portable,
+        size: Size(9),
+        seeds: vec![n, n + 1],
+        span: Span::Share,
+        faults: Vec::new(),
+    };
+    let tracks: Vec<Track> =
+        (0..cpus).map(|c| Track { cpu: Cpu(c), core: c, slices: (0..20).map(spec).collect() }).collect();
+    let setup = Setup {
+        job_id: 1,
+        job: Job::Window,
+        budget: BUDGET,
+        longest: Duration::from_secs(2),
+        grace: Duration::from_secs(1),
+        losses_borne: 8,
+        arrangement: "all steady 100%".into(),
+        tracks,
+    };
+    let faulty = if rng.next_u64().is_multiple_of(2) {
+        BTreeSet::from([Cpu(rng.next_u64() as u32 % cpus)])
+    } else {
+        BTreeSet::new()
+    };
+    let disk_fails_at = rng.next_u64().is_multiple_of(12).then(|| Duration::from_millis(rng.next_u64() % 25_000));
+    World {
+        rng,
+        at: Duration::ZERO,
+        supervisor: Supervisor::new(setup, Box::new(Words)),
+        queue: BinaryHeap::new(),
+        news: BTreeMap::new(),
+        ticks: 0,
+        generation: BTreeMap::new(),
+        worker_free: BTreeMap::new(),
+        events: Vec::new(),
+        ended: None,
+        deeds: BTreeMap::new(),
+        faulty,
+        disk_fails_at,
+        disk_failed: false,
+        halted: BTreeMap::new(),
+    }
+}
+
+fn check(world: &World, seed: u64) {
+    let (ending, at) = world.ended.unwrap();
+    assert!(at <= BUDGET + Duration::from_millis(500), "seed {seed}: ended at {at:?}");
+    let mut intents = BTreeSet::new();
+    let mut settled = BTreeMap::new();
+    for event in &world.events {
+        match event {
+            Event::Intent(i) => intents.extend(i.assignments.iter().map(|a| (a.cpu, a.slice))),
+            Event::Slice(s) => *settled.entry((s.cpu, s.slice)).or_insert(0) += 1,
+            Event::Lost(l) => *settled.entry((l.cpu, l.slice)).or_insert(0) += 1,
+            _ => {}
+        }
+        let accused = match event {
+            Event::Mismatch(m) => Some(m.cpu),
+            Event::Slice(s) if s.mismatches > 0 && s.void.is_none() => Some(s.cpu),
+            Event::Lost(l) => Some(l.cpu),
+            _ => None,
+        };
+        if let Some(cpu) = accused {
+            assert!(world.faulty.contains(&cpu), "seed {seed}: healthy cpu {cpu} accused by {event:?}");
+        }
+        if let Event::Slice(s) = event
+            && s.void.is_none()
+        {
+            assert!(intents.contains(&(s.cpu, s.slice)), "seed {seed}: a slice without its intent on record before");
+        }
+    }
+    if ending != Ending::Failed && !world.disk_failed {
+        assert!(settled.values().all(|n| *n == 1), "seed {seed}: a slice settled twice");
+        let settled: BTreeSet<_> = settled.into_keys().collect();
+        assert_eq!(intents, settled, "seed {seed}: intents and outcomes differ");
+        let voids_where_moved =
+            world.events.iter().filter(|e| matches!(e, Event::Slice(s) if s.void.is_some() && s.runs > 0));
+        assert!(voids_where_moved.count() as u64 <= world.deeds.get(&Deed::Moved).copied().unwrap_or(0));
+    }
+}
+
+#[test]
+fn windows_with_any_fault_at_any_point_keep_their_promises() {
+    let mut deeds: BTreeMap<Deed, u64> = BTreeMap::new();
+    let mut endings = BTreeSet::new();
+    for seed in 0..2000 {
+        let mut world = world(seed);
+        world.play();
+        check(&world, seed);
+        for (deed, n) in &world.deeds {
+            *deeds.entry(*deed).or_default() += n;
+        }
+        endings.insert(format!("{:?}", world.ended.unwrap().0));
+    }
+    for deed in
+        [Deed::Wrong, Deed::Blind, Deed::Crash, Deed::Hang, Deed::Babble, Deed::Moved, Deed::Stop, Deed::ForeignReport]
+    {
+        assert!(deeds.get(&deed).copied().unwrap_or(0) >= 300, "{deed:?} was met too seldom: {deeds:?}");
+    }
+    assert_eq!(
+        endings.into_iter().collect::<Vec<_>>(),
+        ["Budget", "Done", "Failed", "Signal"],
+        "kinds of ending that were met"
+    );
+}
+
+#[test]
+fn wrong_and_blind_workers_are_noticed_every_time() {
+    for seed in 0..500 {
+        let mut world = world(seed);
+        world.disk_fails_at = None;
+        world.play();
+        let mismatches = world.events.iter().filter(|e| matches!(e, Event::Mismatch(_))).count() as u64;
+        let done = |deed| world.deeds.get(&deed).copied().unwrap_or(0);
+        let ordered = done(Deed::Wrong) + done(Deed::Blind);
+        // a slice that was cut off at the end, or that waited behind a lost one, may not have come to it
+        let lost: u64 =
+            [Deed::Crash, Deed::Hang, Deed::Babble, Deed::Stop, Deed::ForeignReport].into_iter().map(done).sum();
+        assert!(mismatches + lost + 2 >= ordered, "seed {seed}: {mismatches} noticed of {ordered}");
+    }
+}
