@@ -170,7 +170,7 @@ pub struct Tally {
     /// What is not in the sums.
     pub left_out: LeftOut,
     standing: HashMap<u64, Standing>,
-    /// Mismatches of windows by job, slice and cpu, until their slice is seen.
+    /// Mismatches of planned slices by job, slice and cpu, until their slice is seen.
     waiting: BTreeMap<(u64, u64, Cpu), Vec<Mismatch>>,
     /// Slices with mismatches that were seen, whatever their purpose.
     told: BTreeSet<(u64, u64, Cpu)>,
@@ -221,7 +221,9 @@ impl Tally {
             }
             Event::Mismatch(mismatch) => {
                 let key = (mismatch.job_id, mismatch.slice, mismatch.cpu);
-                if self.counts(mismatch.job_id, mismatch.job) && !self.told.contains(&key) {
+                let counts = self.counts(mismatch.job_id, mismatch.job);
+                // repeats for confirmation are told by their finding
+                if counts && mismatch.purpose == Purpose::Plan && !self.told.contains(&key) {
                     self.waiting.entry(key).or_default().push(mismatch.clone());
                 }
             }

@@ -43,6 +43,10 @@ struct MarkerText {
 
 /// The marker of the ledger at `path`; an error that says what is there instead.
 pub fn marker(path: &Path) -> Result<Marker, Error> {
+    if path.as_os_str().is_empty() {
+        // joined with a file's name it would mean the current folder
+        return Err(Error::NotAFolder { path: "\"\"".into() });
+    }
     match fs::metadata(path) {
         Ok(about) if !about.is_dir() => return Err(Error::NotAFolder { path: path.into() }),
         Ok(_) => {}
@@ -186,9 +190,12 @@ fn random_name() -> Result<String, Error> {
     Ok(bytes.iter().map(|b| format!("{b:02x}")).collect())
 }
 
-/// Makes names in the folder durable.
+/// Makes names in the folder durable. File systems that cannot sync a folder by itself say EINVAL.
 pub fn sync_folder(path: &Path) -> io::Result<()> {
-    File::open(path)?.sync_all()
+    match File::open(path)?.sync_all() {
+        Err(error) if error.kind() == io::ErrorKind::InvalidInput => Ok(()),
+        done => done,
+    }
 }
 
 /// Numbers of the segments in the folder, in order; there may be gaps.

@@ -3,16 +3,23 @@
 //! An assignment of an intent is *open* until a slice or a lost worker of the same job, slice and cpu is on record,
 //! or the job's end: a job that wrote its own end was not cut off, so nobody is to be blamed for what it left out.
 
-use std::collections::{BTreeMap, HashMap};
+use std::collections::BTreeMap;
 
 use crate::event::{Assignment, Event, How, Job, Lost};
 use crate::host::Cpu;
 
+/// An assignment, with what its intent says.
+#[derive(Clone, Debug)]
+struct Promise {
+    job: Job,
+    wall_ms: u64,
+    assignment: Assignment,
+}
+
 /// Follows the intents of a ledger, event by event.
 #[derive(Clone, Debug, Default)]
 pub struct OpenIntents {
-    open: BTreeMap<(u64, u64, Cpu), (u64, Assignment)>,
-    jobs: HashMap<u64, Job>,
+    open: BTreeMap<(u64, u64, Cpu), Promise>,
     highest_job: u64,
 }
 
@@ -21,13 +28,13 @@ impl OpenIntents {
     pub fn add(&mut self, event: &Event) {
         match event {
             Event::Opened(opened) => {
-                self.jobs.insert(opened.job_id, opened.job);
                 self.highest_job = self.highest_job.max(opened.job_id);
             }
             Event::Intent(intent) => {
                 for assignment in &intent.assignments {
                     let key = (intent.job_id, assignment.slice, assignment.cpu);
-                    self.open.insert(key, (intent.wall_ms, assignment.clone()));
+                    let promise = Promise { job: intent.job, wall_ms: intent.wall_ms, assignment: assignment.clone() };
+                    self.open.insert(key, promise);
                 }
             }
             Event::Slice(slice) => {
@@ -51,12 +58,11 @@ impl OpenIntents {
     }
 
     /// What was under way, as records for the next start to append; their host clock is that of the intent, the last
-    /// moment that is known to lie before the loss. A job that never said what it is counts as a window: a loss
-    /// must not hide.
+    /// moment that is known to lie before the loss.
     pub fn abandoned(&self) -> Vec<Lost> {
-        let lost = self.open.iter().map(|(&(job_id, slice, cpu), (wall_ms, a))| Lost {
+        let lost = self.open.iter().map(|(&(job_id, slice, cpu), Promise { job, wall_ms, assignment: a })| Lost {
             job_id,
-            job: self.jobs.get(&job_id).copied().unwrap_or(Job::Window),
+            job: *job,
             slice,
             cpu,
             core: a.core,

@@ -164,3 +164,23 @@ fn segments_turn_at_their_size_and_carry_the_chain() {
     }
     assert_eq!((seq, prev), (20, head.sha256));
 }
+
+#[test]
+fn promises_and_evidence_are_synced_at_once() {
+    let clean = std::path::Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/data/ledgers/clean");
+    let disk = Faulty::default();
+    let mut journal = disk.journal();
+    let mut kinds = std::collections::BTreeSet::new();
+    for entry in Reader::open(&clean).unwrap() {
+        let Record::Event(event) = entry.record else { continue };
+        journal.record(&event).unwrap();
+        let kind = record::kind(&event);
+        let state = disk.0.lock().unwrap();
+        let written = state.segments[0].iter().filter(|&&b| b == b'\n').count() as u64;
+        let synced = state.synced.first().copied() == Some(state.segments[0].len())
+            && Some(written) == journal.head().map(|h| h.seq + 1);
+        assert_eq!(synced, !["opened", "slice", "remark"].contains(&kind), "{kind}");
+        kinds.insert(kind);
+    }
+    assert_eq!(kinds.len(), record::KINDS.len(), "an example of each");
+}
