@@ -79,6 +79,7 @@ pub struct Assignment {
     /// Slice number within the job.
     pub slice: u64,
     /// Why.
+    #[serde(default)]
     pub purpose: Purpose,
     /// Kernel id.
     pub kernel: String,
@@ -102,10 +103,11 @@ pub struct Intent {
 }
 
 /// Why a slice was run.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, Serialize, Deserialize)]
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Hash, Serialize, Deserialize)]
 #[serde(rename_all = "snake_case")]
 pub enum Purpose {
     /// Part of the plan; counts in rates.
+    #[default]
     Plan,
     /// Re-run of a failing case on the core it failed on; chosen because it failed, so never in rates.
     Suspect,

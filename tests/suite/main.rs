@@ -1,13 +1,10 @@
-//! Everything that is tested from outside, one file a topic.
-
-mod ledger;
 //! The one integration binary, one file a topic.
 
-mod supervisor;
-//! One integration binary; one file a topic.
-
+mod bad_input;
+mod host;
+mod ledger;
+mod outside;
+mod running;
 mod statistics;
 mod statistics_edges;
-//! The one integration binary: one module a topic.
-
-mod host;
+mod supervisor;
