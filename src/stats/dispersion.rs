@@ -19,6 +19,9 @@ pub struct Dispersion {
     pub chi_square: f64,
     /// cells − 1.
     pub degrees: usize,
+    /// Shape k of the negative binomial law by moments, mean² / (variance − mean); small where counts clump, `None` where
+    /// they scatter no more than chance.
+    pub moment_shape: Option<f64>,
     /// Probability of a χ² this large or larger if only chance scatters the counts.
     pub p_upper: f64,
 }
@@ -69,5 +72,7 @@ fn dispersion_by(counts: &[u64], exposure: impl Fn(usize) -> f64) -> Result<Disp
         })
         .sum();
     let p_upper = Poisson::chi_square_above(degrees as f64, chi_square);
-    Ok(Dispersion { cells, mean, variance, index: chi_square / degrees as f64, chi_square, degrees, p_upper })
+    let index = chi_square / degrees as f64;
+    let moment_shape = (variance > mean).then(|| mean * mean / (variance - mean));
+    Ok(Dispersion { cells, mean, variance, index, chi_square, degrees, moment_shape, p_upper })
 }

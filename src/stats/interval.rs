@@ -79,6 +79,9 @@ pub enum StatsError {
     /// The statistic does not exist without events.
     #[error("0 events leave {0} undetermined: collect more exposure or report the zero-failure bound")]
     NoEvents(&'static str),
+    /// The counts scatter too little for a law of different rates.
+    #[error("the counts scatter no more than one common rate would make them: pool them instead")]
+    OneRate,
     /// Too few values.
     #[error("{given} {name} are too few: give at least {needed}")]
     TooFew {

@@ -9,10 +9,14 @@
 //! | how many per hour? | [`garwood`], [`mid_p_rate`] |
 //! | what does silence prove, how long must it last? | [`upper_per_run`], [`upper_rate`], [`exposure_needed`], [`success_runs`], [`demonstration_runs`], [`mtbf`], [`fit_rate`] |
 //! | is this core worse than that one? | [`compare_rates`], [`rate_ratio`], [`fisher_exact`], [`odds_ratio`] |
-//! | do failures cluster? | [`episodes()`], [`dispersion()`] |
+//! | do failures cluster, and what then? | [`episodes()`], [`dispersion()`], [`clustered_rate`], [`clustered_share`], [`compare_clustered`] |
+//! | many cells with few events? | [`GammaPrior`] |
+//! | may the test stop now? | [`SequentialPlan`], [`RunLines`] |
+//! | would the test notice? | [`detection_probability`], [`exposure_to_detect`], [`comparison_power`] |
 //! | what of many tests at once? | [`holm`], [`benjamini_hochberg`] |
 
 mod binomial;
+mod cluster;
 mod compare;
 mod dispersion;
 mod episodes;
@@ -22,9 +26,13 @@ mod law;
 mod multiple;
 mod numerics;
 mod poisson;
+mod power;
+mod sequential;
+mod shrinkage;
 mod zero_failure;
 
 pub use binomial::{clopper_pearson, clopper_pearson_lower, clopper_pearson_upper, exact_test, mid_p, wilson};
+pub use cluster::{ClusteredShare, ClusteredTest, clustered_rate, clustered_share, compare_clustered};
 pub use compare::{Observed, RateTest, compare_rates, rate_ratio};
 pub use dispersion::{Dispersion, dispersion, dispersion_with_exposure};
 pub use episodes::{Episode, episodes};
@@ -32,6 +40,9 @@ pub use fisher::{FisherTest, fisher_exact, odds_ratio, odds_ratio_lower};
 pub use interval::{Interval, StatsError};
 pub use multiple::{benjamini_hochberg, bonferroni, hochberg, holm, rejections};
 pub use poisson::{garwood, garwood_lower, garwood_upper, mid_p_rate};
+pub use power::{comparison_power, detection_probability, exposure_to_detect};
+pub use sequential::{OperatingPoint, RunLines, SequentialPlan};
+pub use shrinkage::GammaPrior;
 pub use zero_failure::{
     demonstration_runs, exposure_needed, fit_rate, mtbf, rule_of_three, success_runs, test_length_factor,
     upper_per_run, upper_rate,

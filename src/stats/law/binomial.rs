@@ -54,7 +54,7 @@ impl CountLaw for Binomial {
             return n * self.mirrored().ln_q();
         }
         let excess = self.excess(k, n);
-        let deviance = poisson_deviance(excess, n * self.p) + poisson_deviance(-excess, n * self.q);
+        let deviance = poisson_deviance(k, excess, n * self.p) + poisson_deviance(n - k, -excess, n * self.q);
         let stirling = stirling_error(n) - stirling_error(k) - stirling_error(n - k);
         stirling - deviance - 0.5 * (TAU * k * ((n - k) / n)).ln()
     }

@@ -2,7 +2,7 @@
 
 use super::{CountLaw, Tail};
 use crate::stats::numerics::{integrate_decay, ln_1p_minus, poisson_deviance, root, stirling_error, sum_of_ratios};
-use std::f64::consts::TAU;
+use std::f64::consts::{PI, TAU};
 
 #[derive(Debug, Clone, Copy)]
 pub struct Poisson {
@@ -22,14 +22,13 @@ impl Poisson {
         if chi_square <= 0.0 {
             return 1.0;
         }
-        if degrees < 2.0 {
-            return statrs::function::erf::erfc((0.5 * chi_square).sqrt());
-        }
         let (a, law) = (0.5 * degrees, Poisson { mean: 0.5 * chi_square });
         if law.mean < a {
             1.0 - law.ln_point(a).exp() * law.above(a)
         } else {
-            law.ln_point(a - 1.0).exp() * law.below(a - 1.0)
+            // one degree of freedom: Γ(½) = √π, where Stirling's formula has nothing to say about k = −½
+            let point = if a == 0.5 { (-law.mean).exp() / (PI * law.mean).sqrt() } else { law.ln_point(a - 1.0).exp() };
+            point * law.below(a - 1.0)
         }
     }
 }
@@ -43,7 +42,7 @@ impl CountLaw for Poisson {
         if k == 0.0 {
             return -self.mean;
         }
-        -stirling_error(k) - poisson_deviance(k - self.mean, self.mean) - 0.5 * (TAU * k).ln()
+        -stirling_error(k) - poisson_deviance(k, k - self.mean, self.mean) - 0.5 * (TAU * k).ln()
     }
 
     fn above(&self, k: f64) -> f64 {

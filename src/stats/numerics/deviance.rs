@@ -22,9 +22,13 @@ pub fn ln_1p_minus(u: f64) -> f64 {
     }
 }
 
-/// k ln(k / mean) + mean − k, given `excess` = k − mean (which the caller knows better than by subtracting). mean > 0.
-pub fn poisson_deviance(excess: f64, mean: f64) -> f64 {
+/// k ln(k / mean) + mean − k, given also `excess` = k − mean, which the caller knows better than by subtracting.
+/// k and mean > 0.
+pub fn poisson_deviance(k: f64, excess: f64, mean: f64) -> f64 {
     let u = excess / mean;
+    if u.abs() > 0.5 {
+        return k * (k / mean).ln() - excess;
+    }
     mean * ((1.0 + u) * ln_1p_minus(u) + u * u)
 }
 

@@ -1,0 +1,250 @@
+//! Windows and drills as a user starts them: the program's own binary, its documents, its exit codes, and what it
+//! does when it is disturbed from outside.
+
+use std::path::{Path, PathBuf};
+use std::process::{Child, Command, Output, Stdio};
+use std::time::{Duration, Instant};
+
+use nix::sched::{CpuSet, sched_setaffinity};
+use nix::sys::signal::{Signal, kill};
+use nix::unistd::Pid;
+use serde_json::Value;
+
+/// A folder of its own that goes with the test.
+pub struct Scratch(PathBuf);
+
+impl Scratch {
+    pub fn new(name: &str) -> Scratch {
+        let path = std::env::temp_dir().join(format!("proofhouse-{}-{name}", std::process::id()));
+        let _ = std::fs::remove_dir_all(&path);
+        std::fs::create_dir_all(&path).unwrap();
+        Scratch(path)
+    }
+
+    pub fn path(&self) -> &Path {
+        &self.0
+    }
+
+    pub fn ledger(&self) -> String {
+        self.0.join("ledger").display().to_string()
+    }
+}
+
+impl Drop for Scratch {
+    fn drop(&mut self) {
+        let _ = std::fs::remove_dir_all(&self.0);
+    }
+}
+
+pub fn program(args: &[&str]) -> Command {
+    let mut command = Command::new(env!("CARGO_BIN_EXE_proofhouse"));
+    command.args(args).stdin(Stdio::null()).stdout(Stdio::piped()).stderr(Stdio::piped());
+    command
+}
+
+pub fn run(args: &[&str]) -> Output {
+    program(args).output().unwrap()
+}
+
+pub fn json(output: &Output) -> Value {
+    serde_json::from_slice(&output.stdout)
+        .unwrap_or_else(|e| panic!("{e}: {}{}", String::from_utf8_lossy(&output.stdout), String::from_utf8_lossy(&output.stderr)))
+}
+
+/// Cpus of the machine; tests that need two say so and pass on one.
+pub fn cpus() -> Vec<u32> {
+    proofhouse::host::affinity::mask().unwrap().iter().map(|c| c.0).collect()
+}
+
+/// Runs one window at a time: two at once on the same cores would hold each other up.
+pub fn alone() -> std::sync::MutexGuard<'static, ()> {
+    static TURN: std::sync::Mutex<()> = std::sync::Mutex::new(());
+    TURN.lock().unwrap_or_else(|e| e.into_inner())
+}
+
+/// The worker of `cpu` below the program `parent`, once it is there.
+pub fn worker(parent: &Child, cpu: u32) -> Pid {
+    let wanted = format!("worker\0--cpu\0{cpu}\0");
+    let patience = Instant::now() + Duration::from_secs(10);
+    while Instant::now() < patience {
+        for entry in std::fs::read_dir("/proc").unwrap().flatten() {
+            let Some(pid) = entry.file_name().to_str().and_then(|n| n.parse::<i32>().ok()) else { continue };
+            let text = |file: &str| std::fs::read_to_string(entry.path().join(file)).unwrap_or_default();
+            let parent_line = format!("PPid:\t{}\n", parent.id());
+            if text("status").contains(&parent_line) && text("cmdline").ends_with(&wanted) {
+                return Pid::from_raw(pid);
+            }
+        }
+        std::thread::sleep(Duration::from_millis(5));
+    }
+    panic!("no worker of cpu {cpu} came up");
+}
+
+fn window(scratch: &Scratch, budget: &str, more: &[&str]) -> Child {
+    let ledger = scratch.ledger();
+    let mut args = vec!["window", "--budget", budget, "--format", "json", "--ledger", &ledger, "--kernels", "integer.*"];
+    args.extend(more);
+    program(&args).spawn().unwrap()
+}
+
+#[test]
+fn a_window_ends_on_its_budget_and_covers_every_unit_on_every_cpu() {
+    let _turn = alone();
+    let scratch = Scratch::new("budget");
+    let begun = Instant::now();
+    let ledger = scratch.ledger();
+    let output = run(&["window", "--budget", "6s", "--format", "json", "--ledger", &ledger]);
+    let took = begun.elapsed();
+    let report = json(&output);
+    assert_eq!(output.status.code(), Some(0), "{report:#}");
+    assert!(took <= Duration::from_secs(7), "took {took:?} of 6 s");
+    assert_eq!(report["schema"], "proofhouse/window/1");
+    assert_eq!(report["verdict"], "clear");
+    let cpus = cpus();
+    assert_eq!(report["cores"].as_array().unwrap().len(), cpus.len());
+    for cpu in &cpus {
+        for kernel in kernels::catalogue::KERNELS {
+            for (variant, proof) in kernels::isa::survey(*kernel) {
+                let ran = report["kernels"].as_array().unwrap().iter().any(|k| {
+                    k["kernel"] == kernel.id() && k["variant"] == variant.name() && k["cpu"] == *cpu && k["runs"].as_u64() > Some(0)
+                });
+                assert_eq!(ran, proof.is_ok(), "{} {variant} on cpu {cpu}", kernel.id());
+            }
+        }
+    }
+    for core in report["cores"].as_array().unwrap() {
+        assert_eq!(core["mismatches"], 0);
+        let rate = &core["per_hour"];
+        // Garwood 1936: no event in t hours bounds the rate by -ln(0.05) / t with 95 % confidence
+        let bound = 2.995_732_273_553_991 * 3600.0 / core["busy_s"].as_f64().unwrap();
+        assert!((rate["upper"].as_f64().unwrap() / bound - 1.0).abs() < 1e-6, "{core:#}");
+        assert_eq!(rate["confidence"], 0.95);
+    }
+    let verified = run(&["ledger", "verify", "--ledger", &ledger, "--format", "json"]);
+    assert_eq!((verified.status.code(), &json(&verified)["condition"]["state"]), (Some(0), &Value::from("clean")));
+    let shown = json(&run(&["ledger", "show", "--ledger", &ledger, "--format", "json"]));
+    let sum = |v: &Value, key: &str| v[key].as_array().unwrap().iter().map(|c| c["runs"].as_u64().unwrap()).sum::<u64>();
+    assert_eq!(sum(&shown, "cells"), sum(&report, "kernels"), "the ledger holds every run that the window reported");
+}
+
+#[test]
+fn a_drill_notices_every_fault_on_its_core_and_counts_nowhere() {
+    let _turn = alone();
+    if cpus().len() < 2 {
+        return;
+    }
+    let scratch = Scratch::new("drill");
+    let ledger = scratch.ledger();
+    let output = run(&["drill", "--faults", "36", "--seed", "11", "--format", "json", "--ledger", &ledger]);
+    let report = json(&output);
+    assert_eq!(output.status.code(), Some(0), "{report:#}");
+    assert_eq!((&report["faults"], &report["noticed"]), (&Value::from(36), &Value::from(36)));
+    assert_eq!(report["on_others"], Value::Array(vec![]));
+    let kinds = report["kinds"].as_array().unwrap();
+    assert_eq!(kinds.len(), 6);
+    let blind = kinds.iter().find(|k| k["kind"] == "flipped bit, blind comparison").unwrap();
+    assert_eq!(blind["by_fold"], blind["drilled"], "a worker that compares wrongly is caught by the fold");
+    assert!(report["confirmed"].as_u64() > Some(0), "{report:#}");
+    let shown = json(&run(&["ledger", "show", "--ledger", &ledger, "--format", "json"]));
+    assert_eq!((&shown["cpus"], &shown["cells"]), (&Value::Array(vec![]), &Value::Array(vec![])));
+    assert!(shown["left_out"]["drill"].as_u64() > Some(72));
+}
+
+#[test]
+fn workers_that_are_killed_or_stopped_from_outside_are_replaced_and_accuse_nobody() {
+    let _turn = alone();
+    let cpu = *cpus().last().unwrap();
+    for (signal, how) in [(Signal::SIGKILL, "SIGKILL"), (Signal::SIGSTOP, "stopped from outside")] {
+        let scratch = Scratch::new("killed");
+        let child = window(&scratch, "9s", &[]);
+        let pid = worker(&child, cpu);
+        std::thread::sleep(Duration::from_millis(800));
+        kill(pid, signal).unwrap();
+        let output = child.wait_with_output().unwrap();
+        let report = json(&output);
+        let lost = report["lost"].as_array().unwrap();
+        assert_eq!(lost.len(), 1, "{report:#}");
+        assert_eq!(lost[0]["cpu"], cpu);
+        assert!(lost[0]["how"].as_str().unwrap().contains(how), "{}", lost[0]);
+        assert_eq!((output.status.code(), &report["verdict"]), (Some(0), &Value::from("clear")), "{report:#}");
+        let busy = report["cores"].as_array().unwrap().iter().find(|c| c["cpu"] == cpu).unwrap()["busy_s"].as_f64();
+        assert!(busy > Some(1.0), "the worker was replaced: {busy:?}");
+    }
+}
+
+#[test]
+fn a_worker_that_crashes_is_held_against_its_core() {
+    let _turn = alone();
+    let cpu = *cpus().last().unwrap();
+    let scratch = Scratch::new("crash");
+    let child = window(&scratch, "4s", &[]);
+    let pid = worker(&child, cpu);
+    std::thread::sleep(Duration::from_millis(800));
+    kill(pid, Signal::SIGSEGV).unwrap();
+    let output = child.wait_with_output().unwrap();
+    let report = json(&output);
+    assert_eq!((output.status.code(), &report["verdict"]), (Some(10), &Value::from("watch")), "{report:#}");
+    for core in report["cores"].as_array().unwrap() {
+        assert_eq!(core["verdict"], if core["cpu"] == cpu { "watch" } else { "clear" });
+    }
+}
+
+#[test]
+fn a_slice_whose_worker_was_moved_is_void() {
+    let _turn = alone();
+    let cpus = cpus();
+    let [first, .., last] = cpus.as_slice() else { return };
+    let scratch = Scratch::new("moved");
+    let child = window(&scratch, "4s", &[]);
+    let pid = worker(&child, *last);
+    std::thread::sleep(Duration::from_millis(900));
+    let mut elsewhere = CpuSet::new();
+    elsewhere.set(*first as usize).unwrap();
+    sched_setaffinity(pid, &elsewhere).unwrap();
+    let output = child.wait_with_output().unwrap();
+    let report = json(&output);
+    let remarks = report["remarks"].to_string();
+    assert!(remarks.contains(&format!("of cpu {last} is void")), "{report:#}");
+    assert_eq!(report["findings"], Value::Array(vec![]));
+    assert_ne!(report["verdict"], "withdraw");
+}
+
+#[test]
+fn a_request_to_end_is_answered_with_what_was_learnt() {
+    let _turn = alone();
+    for signal in [Signal::SIGTERM, Signal::SIGINT] {
+        let scratch = Scratch::new("term");
+        let child = window(&scratch, "10m", &[]);
+        worker(&child, cpus()[0]);
+        std::thread::sleep(Duration::from_millis(1500));
+        let asked = Instant::now();
+        kill(Pid::from_raw(child.id() as i32), signal).unwrap();
+        let output = child.wait_with_output().unwrap();
+        assert!(asked.elapsed() < Duration::from_secs(2), "{:?}", asked.elapsed());
+        let report = json(&output);
+        assert_eq!(report["ending"], "signal");
+        assert!(report["cores"][0]["runs"].as_u64() > Some(0), "{report:#}");
+        let verified = run(&["ledger", "verify", "--ledger", &scratch.ledger()]);
+        assert_eq!(verified.status.code(), Some(0));
+    }
+}
+
+#[test]
+fn a_killed_window_is_attributed_by_the_next_and_only_once() {
+    let _turn = alone();
+    let scratch = Scratch::new("abandoned");
+    let mut child = window(&scratch, "10m", &[]);
+    let workers: Vec<Pid> = cpus().into_iter().map(|cpu| worker(&child, cpu)).collect();
+    std::thread::sleep(Duration::from_millis(800));
+    child.kill().unwrap();
+    child.wait().unwrap();
+    std::thread::sleep(Duration::from_millis(300));
+    for pid in workers {
+        assert!(kill(pid, None).is_err(), "worker {pid} outlived its supervisor");
+    }
+    let report = json(&window(&scratch, "2s", &[]).wait_with_output().unwrap());
+    let cut_off = |r: &Value| r["remarks"].to_string().matches("when an earlier job was cut off").count();
+    assert!(cut_off(&report) >= cpus().len(), "{report:#}");
+    let report = json(&window(&scratch, "2s", &[]).wait_with_output().unwrap());
+    assert_eq!(cut_off(&report), 0, "{report:#}");
+}
