@@ -76,6 +76,7 @@ fn intent(job_id: u64, slices: &[u64]) -> Event {
         cpu: Cpu(slice as u32 % 2),
         core: 0,
         slice,
+        purpose: Purpose::Plan,
         kernel: "fma.chain64".into(),
         variant: "avx2".into(),
         condition: "solo".into(),

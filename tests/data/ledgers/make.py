@@ -24,13 +24,17 @@ def what(slice_, cpu=1):
             "condition": "solo, steady 100 %"}
 
 
+def planned(*which):
+    return {**what(*which), "purpose": "plan"}
+
+
 def events():
     at = 1700000000000
     yield {"kind": "opened", "job_id": 1, "job": "window", "wall_ms": at, "budget_s": 60.0, "seed": 7,
            "host": "machine-id:0011", "part": "0x1f 0x2a", "virtualised": True, "program": "0.1.0",
            "golden": "00ff", "cpus": [0, 1]}
     yield {"kind": "intent", "job_id": 1, "job": "window", "wall_ms": at + 10,
-           "assignments": [{**what(1), "cpu": 1}, {**what(2, 0)}, {**what(3)}]}
+           "assignments": [planned(1), planned(2, 0), planned(3)]}
     tail = {"wall_ms": at + 20, "span_ns": 1000000000, "busy_ns": 990000000, "cases": 4, "runs": 80000,
             "operations": 81920000, "unit": "multiply", "fold": "right", "checked_on": 0, "surroundings": {}}
     yield {"kind": "mismatch", "job_id": 1, "job": "window", "purpose": "plan", **what(1), "seed": 11, "size": 0, "wall_ms": at + 500,
@@ -55,7 +59,7 @@ def events():
     yield {"kind": "opened", "job_id": 2, "job": "window", "wall_ms": at + 90000, "budget_s": 0.1, "seed": 8,
            "host": "machine-id:0011", "part": "0x1f 0x2a", "virtualised": True, "program": "0.1.0",
            "golden": "00ff", "cpus": [0, 1]}
-    yield {"kind": "intent", "job_id": 2, "job": "window", "wall_ms": at + 90010, "assignments": [what(1, 0), what(2, 1)]}
+    yield {"kind": "intent", "job_id": 2, "job": "window", "wall_ms": at + 90010, "assignments": [planned(1, 0), planned(2, 1)]}
     yield {"kind": "slice", "job_id": 2, "job": "window", "purpose": "plan", **what(1, 0), **tail, "mismatches": 0}
 
 
