@@ -1,0 +1,87 @@
+//! The lane trait of the FMA kernels: a register of floating-point lanes with fused multiply-add.
+
+/// A register of `WIDTH` lanes of `Scalar`.
+pub trait FmaLanes: Copy {
+    /// What one lane holds.
+    type Scalar: Copy;
+    /// Lanes in a register.
+    const WIDTH: usize;
+
+    /// Reads `WIDTH` lanes, aligned or not.
+    ///
+    /// # Safety
+    /// `from` is valid for reading `WIDTH` scalars, and the CPU has the instructions of the register.
+    unsafe fn load(from: *const Self::Scalar) -> Self;
+
+    /// Writes `WIDTH` lanes, aligned or not.
+    ///
+    /// # Safety
+    /// `to` is valid for writing `WIDTH` scalars, and the CPU has the instructions of the register.
+    unsafe fn store(self, to: *mut Self::Scalar);
+
+    /// self · factor + addend in every lane, rounded once (IEEE 754-2019 §5.4.1 fusedMultiplyAdd).
+    ///
+    /// # Safety
+    /// The CPU has the instructions of the register.
+    unsafe fn mul_add(self, factor: Self, addend: Self) -> Self;
+}
+
+/// Implements [`FmaLanes`] for a vector type by its three intrinsics; the last one with the operands in `(x, factor, addend)`.
+macro_rules! fma_lanes {
+    ($register:ty, $scalar:ty, $width:literal, $load:path, $store:path, |$x:ident, $factor:ident, $addend:ident| $fma:expr) => {
+        impl $crate::lanes::fma::FmaLanes for $register {
+            type Scalar = $scalar;
+            const WIDTH: usize = $width;
+
+            #[inline(always)]
+            unsafe fn load(from: *const $scalar) -> Self {
+                // SAFETY: the caller vouches for the pointer and for the instruction
+                unsafe { $load(from) }
+            }
+
+            #[inline(always)]
+            unsafe fn store(self, to: *mut $scalar) {
+                // SAFETY: the caller vouches for the pointer and for the instruction
+                unsafe { $store(to, self) }
+            }
+
+            #[inline(always)]
+            unsafe fn mul_add(self, factor: Self, addend: Self) -> Self {
+                let ($x, $factor, $addend) = (self, factor, addend);
+                // SAFETY: the caller vouches for the instruction
+                unsafe { $fma }
+            }
+        }
+    };
+}
+pub(super) use fma_lanes;
+
+/// Implements [`FmaLanes`] for one scalar, where the target's baseline has the instruction.
+#[cfg(target_arch = "aarch64")]
+macro_rules! fma_scalar {
+    ($scalar:ty) => {
+        impl $crate::lanes::fma::FmaLanes for $scalar {
+            type Scalar = $scalar;
+            const WIDTH: usize = 1;
+
+            #[inline(always)]
+            unsafe fn load(from: *const $scalar) -> Self {
+                // SAFETY: the caller vouches for the pointer
+                unsafe { from.read() }
+            }
+
+            #[inline(always)]
+            unsafe fn store(self, to: *mut $scalar) {
+                // SAFETY: the caller vouches for the pointer
+                unsafe { to.write(self) }
+            }
+
+            #[inline(always)]
+            unsafe fn mul_add(self, factor: Self, addend: Self) -> Self {
+                <$scalar>::mul_add(self, factor, addend)
+            }
+        }
+    };
+}
+#[cfg(target_arch = "aarch64")]
+pub(super) use fma_scalar;

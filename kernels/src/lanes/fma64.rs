@@ -1,0 +1,24 @@
+//! Registers of f64 lanes with fused multiply-add.
+
+use super::fma::fma_lanes;
+
+#[cfg(target_arch = "x86_64")]
+mod x86 {
+    use std::arch::x86_64 as arch;
+    super::fma_lanes!(arch::__m256d, f64, 4, arch::_mm256_loadu_pd, arch::_mm256_storeu_pd, |x, factor, addend| {
+        arch::_mm256_fmadd_pd(x, factor, addend)
+    });
+    super::fma_lanes!(arch::__m512d, f64, 8, arch::_mm512_loadu_pd, arch::_mm512_storeu_pd, |x, factor, addend| {
+        arch::_mm512_fmadd_pd(x, factor, addend)
+    });
+}
+
+#[cfg(target_arch = "aarch64")]
+mod arm {
+    use std::arch::aarch64 as arch;
+    // the accumulator comes first in this architecture's intrinsic
+    super::fma_lanes!(arch::float64x2_t, f64, 2, arch::vld1q_f64, arch::vst1q_f64, |x, factor, addend| {
+        arch::vfmaq_f64(addend, x, factor)
+    });
+    super::super::fma::fma_scalar!(f64);
+}
