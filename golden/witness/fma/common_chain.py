@@ -35,31 +35,36 @@ class Chains:
         if not odd:
             return 0, 0
         if row % 4 == 3:
-            return 0, -self.least - 1 - raw % 12
+            return 0, -self.least - 1 - raw % 4
         high, low = divmod(raw, 1 << self.bits // 2)
         up = 16 + low % (-self.least - 38)
         return up, 16 + high % (-self.least - 16 - up)
 
     def _row(self, raw: tuple[int, ...], odd: bool, row: int) -> list[mpfr]:
-        c, w, u, b, e = raw
+        c, u, b, w, e = raw
         up, down = self._swing(e, odd, row)
         two = mpq(2)
         scale = self._significand(u) / 2
-        inverse = min(1 / scale, 2 - mpq(1, 1 << self.fraction))
+        # 1/|u| is cut to the fraction's last place, below 2, before 1 is taken from it
+        unit = 1 << self.fraction
+        inverse = min(mpq(unit * scale.denominator // scale.numerator, unit), 2 - mpq(1, unit))
         values = [
-            -self._significand(c, "0" * 7) / 2,
-            self._significand(w, "11110") * two**up if up else self._significand(w, "1110") / 2,
+            -self._significand(c, "1111110") / 4,
+            inverse * two**up if up else inverse - 1,
             self._sign(u) * scale / two ** (up + down),
             self._sign(b) * self._significand(b) / two ** (9 + down),
+            self._significand(w, "111110") * two**down if down else self._significand(w, "11110") / 2,
         ]
-        # 1/|u| is cut to the fraction's last place before 1 is taken from it
-        inverse = mpq(inverse.numerator * (1 << self.fraction) // inverse.denominator, 1 << self.fraction)
-        values.append(inverse * two**down if down else inverse - 1)
-        return [mpfr(v) for v in values]
+        return [mpfr(value) for value in values]
 
     def _vector(self, stream: Stream) -> list[int]:
         count = 8 * 64 // self.bits
         return list(struct.unpack(f"<{count}{'Q' if self.bits == 64 else 'I'}", stream.bytes(64)))
+
+    def _bits(self, values) -> tuple[int, ...]:
+        floats = [float(value) for value in values]
+        kinds = "dQ" if self.bits == 64 else "fI"
+        return struct.unpack(f"<{len(floats)}{kinds[1]}", struct.pack(f"<{len(floats)}{kinds[0]}", *floats))
 
     def words(self, seed: int, size: int) -> list[int]:
         stream = Stream(self.kernel, seed, size)
@@ -75,13 +80,16 @@ class Chains:
         with self.near:
             fma = gmpy2.fma
             x = [list(column) for column in zip(*starts)]
+            sums = [0] * len(x)
             for row in rows * REPEATS:
-                for lane, (c, w, u, b, v) in enumerate(row):
+                for lane, (c, v, u, b, w) in enumerate(row):
                     chains = x[lane]
                     chains = list(map(fma, chains, chains, repeat(c)))
-                    chains = list(map(fma, chains, repeat(w), chains))
+                    chains = list(map(fma, chains, repeat(v), chains))
                     chains = list(map(fma, chains, repeat(u), repeat(b)))
-                    x[lane] = list(map(fma, chains, repeat(v), chains))
-        ends = [float(value) for column in zip(*x) for value in column]
-        packed = struct.pack(f"<{len(ends)}{'d' if self.bits == 64 else 'f'}", *ends)
-        return list(struct.unpack(f"<{len(packed) // 8}Q", packed))
+                    x[lane] = list(map(fma, chains, repeat(w), chains))
+                    sums[lane] += sum(self._bits(x[lane]))
+        ends = [*self._bits(value for column in zip(*x) for value in column), *(s % (1 << self.bits) for s in sums)]
+        if self.bits == 32:
+            ends = [low | high << 32 for low, high in zip(ends[::2], ends[1::2])]
+        return ends

@@ -2,18 +2,19 @@
 //!
 //! 16 lanes × 12 chains of 2,048 dependent fused multiply-adds, in cycles of four (see `common_walk`). Operands (see
 //! `common_operands`): even seeds bounded in (−1, 1), odd seeds over nearly the whole exponent range with subnormal
-//! results. Output: the 192 chains, by accumulator, then lane, two to a word, the earlier in the low half.
+//! results. Output: the 192 chains, by accumulator, then lane, then the lanes' sums, two to a word, the earlier in the low half.
 
 use super::common_operands::BINARY32;
-use super::common_walk::{ACCUMULATORS, FOOTPRINT_KIB, ROWS, Row, STEPS, Table, walk};
+use super::common_walk::{ACCUMULATORS, FOOTPRINT_KIB, OUTPUT_ROWS, ROWS, Row, STEPS, Table, walk};
 use crate::isa::{Feature, Proof};
 use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
 use crate::operands::Operands;
 
 const LANES: usize = 16;
-const WORDS: usize = ACCUMULATORS * LANES / 2;
+/// In words.
+const STARTS: usize = ACCUMULATORS * LANES / 2;
 
-type Out = [[f32; LANES]; ACCUMULATORS];
+type Out = [[f32; LANES]; OUTPUT_ROWS];
 
 /// See the file's head.
 pub struct Chain32;
@@ -32,7 +33,7 @@ impl Kernel for Chain32 {
     }
 
     fn output_words(&self, _size: Size) -> usize {
-        WORDS
+        OUTPUT_ROWS * LANES / 2
     }
 
     fn work(&self, _size: Size) -> Work {
@@ -46,13 +47,13 @@ impl Kernel for Chain32 {
                 Build {
                     variant: Variant::Avx2,
                     needs: &[Feature::Avx2, Feature::Fma],
-                    marks: &["vfmadd"],
+                    marks: &["vfmadd", "vpaddd"],
                     proven: Proven::Hardware,
                 },
                 Build {
                     variant: Variant::Avx512,
                     needs: &[Feature::Avx512f],
-                    marks: &["vfmadd"],
+                    marks: &["vfmadd", "vpaddd"],
                     proven: Proven::Unexecuted,
                 },
             ]
@@ -104,7 +105,7 @@ fn table(case: &Case) -> Table<f32, LANES> {
             row
         })
         .collect();
-    operands.finish(WORDS + ROWS * 5 * LANES / 2);
+    operands.finish(STARTS + ROWS * 5 * LANES / 2);
     Table { starts, rows }
 }
 
@@ -115,7 +116,7 @@ struct Chains {
 
 impl Ready for Chains {
     fn run(&mut self, out: &mut [u64]) {
-        let mut chains = [[0.0; LANES]; ACCUMULATORS];
+        let mut chains = [[0.0; LANES]; OUTPUT_ROWS];
         // SAFETY: `run` was chosen in `prepare` for a `Proof` of its variant, which `isa` makes only when the CPU has
         // every feature in the build's `needs`
         unsafe { (self.run)(&self.table, &mut chains) };

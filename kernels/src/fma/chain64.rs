@@ -2,18 +2,18 @@
 //!
 //! 8 lanes × 12 chains of 2,048 dependent fused multiply-adds, in cycles of four (see `common_walk`). Operands (see
 //! `common_operands`): even seeds bounded in (−1, 1), odd seeds over nearly the whole exponent range with subnormal
-//! results. Output: the 96 chains, by accumulator, then lane.
+//! results. Output: the 96 chains, by accumulator, then lane, then the lanes' sums.
 
 use super::common_operands::BINARY64;
-use super::common_walk::{ACCUMULATORS, FOOTPRINT_KIB, ROWS, Row, STEPS, Table, walk};
+use super::common_walk::{ACCUMULATORS, FOOTPRINT_KIB, OUTPUT_ROWS, ROWS, Row, STEPS, Table, walk};
 use crate::isa::{Feature, Proof};
 use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
 use crate::operands::Operands;
 
 const LANES: usize = 8;
-const WORDS: usize = ACCUMULATORS * LANES;
+const STARTS: usize = ACCUMULATORS * LANES;
 
-type Out = [[f64; LANES]; ACCUMULATORS];
+type Out = [[f64; LANES]; OUTPUT_ROWS];
 
 /// See the file's head.
 pub struct Chain64;
@@ -32,7 +32,7 @@ impl Kernel for Chain64 {
     }
 
     fn output_words(&self, _size: Size) -> usize {
-        WORDS
+        OUTPUT_ROWS * LANES
     }
 
     fn work(&self, _size: Size) -> Work {
@@ -46,13 +46,13 @@ impl Kernel for Chain64 {
                 Build {
                     variant: Variant::Avx2,
                     needs: &[Feature::Avx2, Feature::Fma],
-                    marks: &["vfmadd"],
+                    marks: &["vfmadd", "vpaddq"],
                     proven: Proven::Hardware,
                 },
                 Build {
                     variant: Variant::Avx512,
                     needs: &[Feature::Avx512f],
-                    marks: &["vfmadd"],
+                    marks: &["vfmadd", "vpaddq"],
                     proven: Proven::Unexecuted,
                 },
             ]
@@ -97,7 +97,7 @@ fn table(case: &Case) -> Table<f64, LANES> {
             row
         })
         .collect();
-    operands.finish(WORDS + ROWS * 5 * LANES);
+    operands.finish(STARTS + ROWS * 5 * LANES);
     Table { starts, rows }
 }
 
@@ -108,7 +108,7 @@ struct Chains {
 
 impl Ready for Chains {
     fn run(&mut self, out: &mut [u64]) {
-        let mut chains = [[0.0; LANES]; ACCUMULATORS];
+        let mut chains = [[0.0; LANES]; OUTPUT_ROWS];
         // SAFETY: `run` was chosen in `prepare` for a `Proof` of its variant, which `isa` makes only when the CPU has
         // every feature in the build's `needs`
         unsafe { (self.run)(&self.table, &mut chains) };

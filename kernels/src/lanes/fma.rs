@@ -1,4 +1,5 @@
-//! The lane trait of the FMA kernels: a register of floating-point lanes with fused multiply-add.
+//! The lane trait of the FMA kernels: a register of floating-point lanes with fused multiply-add, and an integer sum of
+//! the lanes' bit patterns.
 
 /// A register of `WIDTH` lanes of `Scalar`.
 pub trait FmaLanes: Copy {
@@ -24,11 +25,27 @@ pub trait FmaLanes: Copy {
     /// # Safety
     /// The CPU has the instructions of the register.
     unsafe fn mul_add(self, factor: Self, addend: Self) -> Self;
+
+    /// Zero bits in every lane.
+    ///
+    /// # Safety
+    /// The CPU has the instructions of the register.
+    unsafe fn no_bits() -> Self;
+
+    /// The lanes' bit patterns added as integers, modulo 2^width. A sum, so that equal errors do not cancel.
+    ///
+    /// # Safety
+    /// The CPU has the instructions of the register.
+    unsafe fn add_bits(self, other: Self) -> Self;
 }
 
-/// Implements [`FmaLanes`] for a vector type by its three intrinsics; the last one with the operands in `(x, factor, addend)`.
+/// Implements [`FmaLanes`] for a vector type by its intrinsics.
 macro_rules! fma_lanes {
-    ($register:ty, $scalar:ty, $width:literal, $load:path, $store:path, |$x:ident, $factor:ident, $addend:ident| $fma:expr) => {
+    (
+        $register:ty, $scalar:ty, $width:literal, $load:path, $store:path,
+        |$x:ident, $factor:ident, $addend:ident| $fma:expr,
+        $zero:expr, |$a:ident, $b:ident| $add:expr
+    ) => {
         impl $crate::lanes::fma::FmaLanes for $register {
             type Scalar = $scalar;
             const WIDTH: usize = $width;
@@ -50,6 +67,19 @@ macro_rules! fma_lanes {
                 let ($x, $factor, $addend) = (self, factor, addend);
                 // SAFETY: the caller vouches for the instruction
                 unsafe { $fma }
+            }
+
+            #[inline(always)]
+            unsafe fn no_bits() -> Self {
+                // SAFETY: the caller vouches for the instruction
+                unsafe { $zero }
+            }
+
+            #[inline(always)]
+            unsafe fn add_bits(self, other: Self) -> Self {
+                let ($a, $b) = (self, other);
+                // SAFETY: the caller vouches for the instruction
+                unsafe { $add }
             }
         }
     };
@@ -79,6 +109,16 @@ macro_rules! fma_scalar {
             #[inline(always)]
             unsafe fn mul_add(self, factor: Self, addend: Self) -> Self {
                 <$scalar>::mul_add(self, factor, addend)
+            }
+
+            #[inline(always)]
+            unsafe fn no_bits() -> Self {
+                0.0
+            }
+
+            #[inline(always)]
+            unsafe fn add_bits(self, other: Self) -> Self {
+                <$scalar>::from_bits(self.to_bits().wrapping_add(other.to_bits()))
             }
         }
     };

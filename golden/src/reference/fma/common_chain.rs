@@ -1,7 +1,8 @@
 //! What both FMA references share: operands as bit patterns, and one chain walked at a time.
 //!
-//! A chain repeats x·x + c, x·w + x, x·u + b, x·v + x over 64 rows of operands, eight times over. Operands are put
-//! together as sign, integer and power of two; 1/|u| by long division, bit by bit.
+//! A chain repeats x·x + c, x·v + x, x·u + b, x·w + x over 64 rows of operands, eight times over; the bit pattern after
+//! each x·w + x goes into the lane's sum. Operands are put together as sign, integer and power of two; 1/|u| by long
+//! division, bit by bit.
 
 use kernels::Case;
 
@@ -22,7 +23,7 @@ pub struct Plan {
 pub struct Drive {
     /// By accumulator, then lane.
     pub starts: Vec<u64>,
-    /// c, w, u, b, v by row, then lane.
+    /// c, v, u, b, w by row, then lane.
     pub rows: Vec<Vec<[u64; 5]>>,
 }
 
@@ -79,7 +80,7 @@ impl Plan {
         let reach = (f.emax() - 2) as u64;
         let (up, down) = match (odd_seed, deep) {
             (false, _) => (0, 0),
-            (true, true) => (0, reach - raw[4] % 12),
+            (true, true) => (0, reach - raw[4] % 4),
             (true, false) => {
                 let half = (f.exponent_bits + f.fraction_bits + 1) / 2;
                 let up = 16 + raw[4] % (1 << half) % (reach - 37);
@@ -87,18 +88,20 @@ impl Plan {
             }
         };
         let (up, down) = (up as i32, down as i32);
-        let c = number(f, true, one | raw[0] & (one / 128 - 1), -1 - point);
-        let w = if up == 0 {
-            number(f, false, one + one / 16 * 14 + raw[1] % (one / 16), -1 - point)
+        let inverse = reciprocal(f, random(raw[1]));
+        let v = if up == 0 { number(f, false, inverse - one, -point) } else { number(f, false, inverse, up - point) };
+        let w = if down == 0 {
+            number(f, false, one + one / 32 * 30 + raw[3] % (one / 32), -1 - point)
         } else {
-            number(f, false, one + one / 32 * 30 + raw[1] % (one / 32), up - point)
+            number(f, false, one + one / 64 * 62 + raw[3] % (one / 64), down - point)
         };
-        let u = number(f, minus(raw[2]), random(raw[2]), -1 - up - down - point);
-        let b = number(f, minus(raw[3]), random(raw[3]), -9 - down - point);
-        let inverse = reciprocal(f, random(raw[2]));
-        let v =
-            if down == 0 { number(f, false, inverse - one, -point) } else { number(f, false, inverse, down - point) };
-        [c, w, u, b, v]
+        [
+            number(f, true, one + one / 128 * 126 + raw[0] % (one / 128), -2 - point),
+            v,
+            number(f, minus(raw[1]), random(raw[1]), -1 - up - down - point),
+            number(f, minus(raw[2]), random(raw[2]), -9 - down - point),
+            w,
+        ]
     }
 
     /// The operands of `case`.
@@ -122,33 +125,44 @@ impl Plan {
     }
 }
 
-/// Where chain number `chain` ends; `see` is shown every intermediate and may change it.
-pub fn end(plan: &Plan, drive: &Drive, chain: usize, mut see: impl FnMut(usize, u64) -> u64) -> u64 {
+/// Where chain number `chain` ends, and what it adds to its lane's sum; `see` is shown every intermediate and gives
+/// what the chain goes on with.
+pub fn end(plan: &Plan, drive: &Drive, chain: usize, mut see: impl FnMut(usize, u64) -> u64) -> (u64, u64) {
     let lane = chain % plan.lanes;
-    let mut x = drive.starts[chain];
+    let (mut x, mut sum) = (drive.starts[chain], 0u64);
     let mut step = 0;
     for _ in 0..REPEATS {
         for row in &drive.rows {
-            let [c, w, u, b, v] = row[lane];
+            let [c, v, u, b, w] = row[lane];
             for kind in 0..4 {
                 let (factor, addend) = match kind {
                     0 => (x, c),
-                    1 => (w, x),
+                    1 => (v, x),
                     2 => (u, b),
-                    _ => (v, x),
+                    _ => (w, x),
                 };
                 x = see(step, fma(plan.format, x, factor, addend, Round::NearestEven).0);
                 step += 1;
             }
+            sum = sum.wrapping_add(x);
         }
     }
-    x
+    (x, sum)
 }
 
-/// The ends of all chains, by accumulator, then lane.
+/// The ends of all chains, by accumulator, then lane, then the lanes' sums.
 pub fn ends(plan: &Plan, case: &Case) -> Vec<u64> {
     let drive = plan.drive(case);
-    (0..drive.starts.len()).map(|chain| end(plan, &drive, chain, |_, x| x)).collect()
+    let mut sums = vec![0u64; plan.lanes];
+    let mut all = Vec::new();
+    for chain in 0..drive.starts.len() {
+        let (x, sum) = end(plan, &drive, chain, |_, x| x);
+        all.push(x);
+        let total = &mut sums[chain % plan.lanes];
+        *total = total.wrapping_add(sum) & (plan.format.sign_bit() | (plan.format.sign_bit() - 1));
+    }
+    all.append(&mut sums);
+    all
 }
 
 #[cfg(test)]
