@@ -4,6 +4,7 @@
 //! hits all three alike; of each the fastest burst but for the luckiest few counts. Ends with 1 when a target is missed.
 
 mod checked;
+mod cycle;
 mod yardsticks;
 
 use std::process::ExitCode;
@@ -12,7 +13,7 @@ use std::time::{Duration, Instant};
 use checked::Checked;
 use kernels::isa::{self, Proof};
 use kernels::{Kernel, Variant, catalogue};
-use yardsticks::{Yardstick, cycle};
+use yardsticks::Yardstick;
 
 /// Kernel, variant (every one if none is named), least ratio to the yardstick.
 const RATIOS: &[(&str, Option<Variant>, f64)] = &[

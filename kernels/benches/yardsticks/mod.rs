@@ -5,7 +5,6 @@
 
 use kernels::{Variant, catalogue, isa};
 
-pub mod cycle;
 mod fma_chain32;
 mod fma_chain64;
 mod fma_common;

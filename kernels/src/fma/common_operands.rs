@@ -45,7 +45,8 @@ impl Format {
         if exponent < self.least {
             return sign | significand >> (self.least - exponent);
         }
-        sign | (((exponent - self.least + 1) as u64) << self.fraction) + (significand - (1 << self.fraction))
+        let field = (exponent - self.least + 1) as u64;
+        sign | field << self.fraction | (significand - (1 << self.fraction))
     }
 
     /// One and the raw word's low bits as fraction, the topmost `bits` of it set to those of `top`.

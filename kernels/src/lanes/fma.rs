@@ -86,10 +86,11 @@ macro_rules! fma_lanes {
 }
 pub(super) use fma_lanes;
 
-/// Implements [`FmaLanes`] for one scalar, where the target's baseline has the instruction.
+/// Implements [`FmaLanes`] for one scalar, where the target's baseline has the instruction, given as text: from
+/// `mul_add` the compiler would make vector instructions again.
 #[cfg(target_arch = "aarch64")]
 macro_rules! fma_scalar {
-    ($scalar:ty) => {
+    ($scalar:ty, $instruction:literal) => {
         impl $crate::lanes::fma::FmaLanes for $scalar {
             type Scalar = $scalar;
             const WIDTH: usize = 1;
@@ -108,7 +109,16 @@ macro_rules! fma_scalar {
 
             #[inline(always)]
             unsafe fn mul_add(self, factor: Self, addend: Self) -> Self {
-                <$scalar>::mul_add(self, factor, addend)
+                let end: $scalar;
+                // SAFETY: the instruction reads and writes the named registers only and is in the baseline
+                unsafe {
+                    std::arch::asm!(
+                        $instruction,
+                        end = lateout(vreg) end, x = in(vreg) self, factor = in(vreg) factor, addend = in(vreg) addend,
+                        options(pure, nomem, nostack, preserves_flags),
+                    );
+                }
+                end
             }
 
             #[inline(always)]

@@ -50,5 +50,5 @@ mod arm {
             arch::vreinterpretq_u32_f32(b)
         ))
     );
-    super::super::fma::fma_scalar!(f32);
+    super::super::fma::fma_scalar!(f32, "fmadd {end:s}, {x:s}, {factor:s}, {addend:s}");
 }

@@ -50,5 +50,5 @@ mod arm {
             arch::vreinterpretq_u64_f64(b)
         ))
     );
-    super::super::fma::fma_scalar!(f64);
+    super::super::fma::fma_scalar!(f64, "fmadd {end:d}, {x:d}, {factor:d}, {addend:d}");
 }

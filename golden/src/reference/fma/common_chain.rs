@@ -44,7 +44,7 @@ fn number(f: Format, negative: bool, mut integer: u64, mut power: i32) -> u64 {
     }
     // a subnormal has no leading one: the field below then comes out as zero by itself
     let steps = (power - lowest) as u64;
-    sign | (steps << f.fraction_bits) + integer
+    sign | ((steps << f.fraction_bits) + integer)
 }
 
 /// ⌊2^(2·fraction + 1) / divisor⌋, at most 2^(fraction + 1) − 1, by restoring division.
@@ -82,7 +82,7 @@ impl Plan {
             (false, _) => (0, 0),
             (true, true) => (0, reach - raw[4] % 4),
             (true, false) => {
-                let half = (f.exponent_bits + f.fraction_bits + 1) / 2;
+                let half = f.sign_bit().trailing_zeros().div_ceil(2);
                 let up = 16 + raw[4] % (1 << half) % (reach - 37);
                 (up, 16 + (raw[4] >> half) % (reach - 15 - up))
             }
