@@ -1,0 +1,5 @@
+//! References of the fused multiply-add family.
+
+pub mod chain32;
+pub mod chain64;
+mod common_chain;
