@@ -136,7 +136,7 @@ const MEMORY_ERRORS: Wanted = hardware(
 const LOG: Wanted = wanted(
     "machine check log",
     "/var/lib/rasdaemon/ras-mc_event.db",
-    "install and start rasdaemon, which keeps what the kernel reports of hardware errors",
+    "have a daemon of the operating system keep what the kernel reports of hardware errors; until then only the counts above are known",
 );
 const CPUSET: Wanted = wanted(
     "cpuset of this control group",
