@@ -64,7 +64,8 @@ pub fn read(root: &Root, temperature: &Temperature) -> Reading<f64> {
 
 fn chip(root: &Root, topology: &Topology, folder: &str) -> Vec<Temperature> {
     let name = root.text(&format!("{folder}/name")).ok().map(|name| clean(&name, 40)).unwrap_or_default();
-    if !DRIVERS.contains(&name.as_str()) && !(name.starts_with("cpu") && name.contains("thermal")) {
+    let watches_processor = DRIVERS.contains(&name.as_str()) || name.starts_with("cpu") && name.contains("thermal");
+    if !watches_processor {
         return Vec::new();
     }
     let inputs: Vec<(String, String)> = root

@@ -7,7 +7,11 @@ use crate::host::root::{Reading, Root};
 use crate::host::unreadable::{Unreadable, Wanted};
 
 const fn wanted(name: &'static str, place: &'static str, if_absent: &'static str) -> Wanted {
-    Wanted { name, place, if_absent }
+    Wanted { name, place, if_absent, hidden_from_guests: false }
+}
+
+const fn hardware(name: &'static str, place: &'static str, if_absent: &'static str) -> Wanted {
+    Wanted { name, place, if_absent, hidden_from_guests: true }
 }
 
 const ONLINE: Wanted = wanted(
@@ -59,27 +63,27 @@ const L3: Wanted = wanted(
     "/sys/devices/system/cpu/cpu*/cache/index*/",
     "some processors have none; footprints are chosen by default size",
 );
-const TEMPERATURE: Wanted = wanted(
+const TEMPERATURE: Wanted = hardware(
     "temperature",
     "/sys/class/hwmon/hwmon*/temp*_input",
     "load the monitoring driver of this processor, for example with modprobe coretemp or modprobe k10temp",
 );
-const FREQUENCY: Wanted = wanted(
+const FREQUENCY: Wanted = hardware(
     "present frequency",
     "/sys/devices/system/cpu/cpu*/cpufreq/scaling_cur_freq",
     "load a cpufreq driver, or allow the operating system to govern frequency in the firmware's settings",
 );
-const CORE_THROTTLES: Wanted = wanted(
+const CORE_THROTTLES: Wanted = hardware(
     "throttling of the core",
     "/sys/devices/system/cpu/cpu*/thermal_throttle/core_throttle_count",
     "only some vendors' processors count it; watch temperature and frequency instead",
 );
-const PACKAGE_THROTTLES: Wanted = wanted(
+const PACKAGE_THROTTLES: Wanted = hardware(
     "throttling of the package",
     "/sys/devices/system/cpu/cpu*/thermal_throttle/package_throttle_count",
     "only some vendors' processors count it; watch temperature and frequency instead",
 );
-const ENERGY: Wanted = wanted(
+const ENERGY: Wanted = hardware(
     "energy",
     "/sys/class/powercap/intel-rapl:*/energy_uj",
     "load the driver with modprobe intel_rapl_msr; it serves several vendors' processors",
@@ -89,7 +93,7 @@ const MICROCODE: Wanted = wanted(
     "/sys/devices/system/cpu/cpu*/microcode/version",
     "some architectures have none; record the firmware's version instead",
 );
-const PPIN: Wanted = wanted(
+const PPIN: Wanted = hardware(
     "inventory number of the processor",
     "/sys/devices/system/cpu/cpu*/topology/ppin",
     "not every processor has one; enable it in the firmware's settings where it can be, or note the serial number by hand",
@@ -114,17 +118,17 @@ const MACHINE_ID: Wanted = wanted(
     "/etc/machine-id",
     "create it with systemd-machine-id-setup, once for every host and never in a disk image",
 );
-const MACHINE_CHECKS: Wanted = wanted(
+const MACHINE_CHECKS: Wanted = hardware(
     "machine check counts",
     "/proc/interrupts, row MCE",
     "this architecture or kernel does not count them there; look into the service processor's event log",
 );
-const THRESHOLDS: Wanted = wanted(
+const THRESHOLDS: Wanted = hardware(
     "counts of corrected-error thresholds",
     "/proc/interrupts, row THR",
     "this kernel does not count them there; look into the service processor's event log",
 );
-const MEMORY_ERRORS: Wanted = wanted(
+const MEMORY_ERRORS: Wanted = hardware(
     "memory error counts",
     "/sys/devices/system/edac/mc/mc*/",
     "load the error detection driver of this memory controller (modules *_edac); memory without error correction has none",
@@ -132,7 +136,7 @@ const MEMORY_ERRORS: Wanted = wanted(
 const LOG: Wanted = wanted(
     "machine check log",
     "/var/lib/rasdaemon/ras-mc_event.db",
-    "install and start rasdaemon, which keeps what the kernel reports of hardware errors",
+    "have a daemon of the operating system keep what the kernel reports of hardware errors; until then only the counts above are known",
 );
 const CPUSET: Wanted = wanted(
     "cpuset of this control group",

@@ -25,8 +25,10 @@ pub struct Wanted {
     pub name: &'static str,
     /// Where it stands, e.g. `/sys/devices/system/cpu/cpu*/topology/ppin`.
     pub place: &'static str,
-    /// What to do where a physical machine does not offer it.
+    /// What to do where it is not offered.
     pub if_absent: &'static str,
+    /// Whether it comes from hardware that a hypervisor usually hides from its guests.
+    pub hidden_from_guests: bool,
 }
 
 impl Wanted {
@@ -62,7 +64,7 @@ impl Wanted {
 
     fn entry(&self, what: String, state: State, virtualised: Option<bool>) -> Unreadable {
         let (why, remedy) = match state {
-            State::Absent if virtualised == Some(true) => (
+            State::Absent if virtualised == Some(true) && self.hidden_from_guests => (
                 "not offered inside this virtual machine".to_owned(),
                 "read it on the physical host underneath; it counts as unknown here, not as zero".to_owned(),
             ),

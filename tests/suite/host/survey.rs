@@ -1,6 +1,7 @@
 //! The document about a host, and its list of what could not be read.
 
 use proofhouse::host::HostSurvey;
+use proofhouse::host::keys::CpuSource;
 use serde_json::Value;
 
 use super::{hosts, set};
@@ -108,6 +109,9 @@ fn a_virtual_machine_says_that_it_is_the_reason() {
     assert_eq!(survey.virtualised, Some(true));
     assert_eq!(why(&survey, "temperature"), ["not offered inside this virtual machine"]);
     assert_eq!(why(&survey, "machine check counts"), [""; 0]);
+    // what the guest's own system decides is not the hypervisor's doing
+    assert_eq!(why(&survey, "machine check log"), ["not offered by this kernel or machine"]);
+    assert_eq!(why(&survey, "id of the installation"), ["not offered by this kernel or machine"]);
 }
 
 #[test]
@@ -135,4 +139,31 @@ fn placeholders_and_contradictions_are_said() {
     tree.line("sys/devices/system/cpu/cpu8/topology/core_cpus_list", "1,8");
     let survey = HostSurvey::of(&tree.host("0-15"));
     assert_eq!(why(&survey, "threads of one core of cpu 0,8"), ["the lists of these cpus contradict each other"]);
+}
+
+#[test]
+fn what_needs_root_says_so() {
+    let tree = hosts::server();
+    tree.owner_only("sys/class/dmi/id/product_uuid", 0o000)
+        .owner_only("sys/class/powercap/intel-rapl:0/energy_uj", 0o000);
+    for n in 0..16 {
+        tree.owner_only(&format!("sys/devices/system/cpu/cpu{n}/topology/ppin"), 0o000);
+    }
+    // root reads all: this thread looks at files as another user does; without root the mode is enough
+    let as_another_user = || {
+        nix::unistd::setfsuid(nix::unistd::Uid::from_raw(65534));
+        HostSurvey::of(&tree.host("0-15"))
+    };
+    let survey = std::thread::scope(|scope| scope.spawn(as_another_user).join().expect("thread"));
+    let lacks: Vec<(&str, &str)> = survey.unreadable.iter().map(|e| (e.what.as_str(), e.why.as_str())).collect();
+    assert_eq!(
+        lacks,
+        [
+            ("energy of package-0", "permission denied"),
+            ("inventory number of the processor (/sys/devices/system/cpu/cpu*/topology/ppin)", "permission denied"),
+            ("id of the machine (/sys/class/dmi/id/product_uuid)", "permission denied"),
+        ]
+    );
+    assert!(survey.unreadable.iter().all(|entry| entry.remedy.starts_with("run as root")));
+    assert!(survey.cpus.iter().all(|cpu| cpu.key.as_ref().is_some_and(|key| key.source == CpuSource::HostAndPlace)));
 }
