@@ -10,7 +10,11 @@ use kernels::Case;
 pub type Reference = fn(&Case) -> Vec<u64>;
 
 /// Every reference by kernel id.
-pub static REFERENCES: &[(&str, Reference)] = &[("integer.multiply", integer::multiply::words)];
+pub static REFERENCES: &[(&str, Reference)] = &[
+    ("integer.multiply", integer::multiply::words),
+    ("integer.divide", integer::divide::words),
+    ("integer.carry", integer::carry::words),
+];
 
 /// The right output of `case`, computed now; `None` for an unknown kernel.
 pub fn words(case: &Case) -> Option<Vec<u64>> {
