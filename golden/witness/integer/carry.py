@@ -25,9 +25,8 @@ def words(seed: int, size: int) -> list[int]:
         return int.from_bytes(stream.bytes(BITS // 8), "little")
 
     pairs = [(number(), number(), 0), (number(), number(), 0)]
-    for _ in range(48):
-        m, n = mask(stream), mask(stream)
-        b, c = number(), number()
+    steps = [(mask(stream), mask(stream), number(), number()) for _ in range(48)]
+    for m, n, b, c in steps * 4:
 
         def step(p: int, q: int, carry: int) -> tuple[int, int, int]:
             def settle(x: int) -> int:

@@ -56,20 +56,24 @@ fn zip(x: &Number, y: &Number, f: impl Fn(u32, u32) -> u32) -> Number {
     std::array::from_fn(|i| f(x[i], y[i]))
 }
 
-/// The numbers P and Q of both pairs after 48 steps, then the two carries.
+/// The numbers P and Q of both pairs after four passes of 48 steps, then the two carries.
 pub fn words(case: &Case) -> Vec<u64> {
     let mut stream = Stream::new(case);
     let mut pairs: Vec<(Number, Number, u64)> = (0..2).map(|_| (draw(&mut stream), draw(&mut stream), 0)).collect();
-    for _ in 0..48 {
-        let (carries, borrows) = (draw_mask(&mut stream), draw_mask(&mut stream));
-        let (add, subtract) = (draw(&mut stream), draw(&mut stream));
+    let steps: Vec<[Number; 4]> = (0..48)
+        .map(|_| {
+            let (carries, borrows) = (draw_mask(&mut stream), draw_mask(&mut stream));
+            [carries, borrows, draw(&mut stream), draw(&mut stream)]
+        })
+        .collect();
+    for [carries, borrows, add, subtract] in (0..4).flat_map(|_| &steps) {
         for (p, q, c) in &mut pairs {
-            let t = plus(q, &zip(q, &carries, |a, m| !(a ^ m)), c);
+            let t = plus(q, &zip(q, carries, |a, m| !(a ^ m)), c);
             *p = minus(p, &t, c);
-            let u = minus(&zip(p, &borrows, |a, m| a ^ m), p, c);
-            *p = plus(p, &add, c);
+            let u = minus(&zip(p, borrows, |a, m| a ^ m), p, c);
+            *p = plus(p, add, c);
             *q = plus(q, &u, c);
-            *q = minus(q, &subtract, c);
+            *q = minus(q, subtract, c);
         }
     }
     let numbers = pairs.iter().flat_map(|(p, q, _)| p.chunks(2).chain(q.chunks(2)));
