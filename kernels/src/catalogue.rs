@@ -3,8 +3,12 @@
 use crate::kernel::Kernel;
 
 /// Every kernel, by family and then name.
-pub static KERNELS: &[&dyn Kernel] =
-    &[&crate::integer::multiply::Multiply, &crate::integer::divide::Divide, &crate::integer::carry::Carry];
+pub static KERNELS: &[&dyn Kernel] = &[
+    &crate::integer::multiply::Multiply,
+    &crate::integer::divide::Divide,
+    &crate::integer::carry::Carry,
+    &crate::vector::shuffle::Shuffle,
+];
 
 /// The kernel with this id.
 pub fn find(id: &str) -> Option<&'static dyn Kernel> {

@@ -3,6 +3,7 @@
 
 pub mod chacha;
 pub mod integer;
+pub mod vector;
 
 use kernels::Case;
 
@@ -14,6 +15,7 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("integer.multiply", integer::multiply::words),
     ("integer.divide", integer::divide::words),
     ("integer.carry", integer::carry::words),
+    ("vector.shuffle", vector::shuffle::words),
 ];
 
 /// The right output of `case`, computed now; `None` for an unknown kernel.

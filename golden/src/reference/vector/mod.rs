@@ -1,0 +1,3 @@
+//! References of the vector family.
+
+pub mod shuffle;

@@ -1,0 +1,3 @@
+//! Vector data movement: shuffles and gathers.
+
+pub mod shuffle;
