@@ -14,6 +14,7 @@ pub static PLAN: &[(&str, &[(u32, u64)])] = &[
     ("integer.divide", &[(6, 64)]),
     ("integer.carry", &[(25, 64)]),
     ("vector.shuffle", &[(13, 64)]),
+    ("vector.gather", &[(25, 64), (265, 64)]),
 ];
 
 macro_rules! embed {
@@ -23,7 +24,8 @@ macro_rules! embed {
 }
 
 /// Every embedded table's text by kernel id.
-pub static TABLES: &[(&str, &str)] = embed!["integer.multiply", "integer.divide", "integer.carry", "vector.shuffle",];
+pub static TABLES: &[(&str, &str)] =
+    embed!["integer.multiply", "integer.divide", "integer.carry", "vector.shuffle", "vector.gather",];
 
 /// SHA-256 of each table, in the format of `sha256sum`.
 pub static PINS: &str = include_str!("../tables/SHA256SUMS");

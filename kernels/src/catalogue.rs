@@ -8,6 +8,7 @@ pub static KERNELS: &[&dyn Kernel] = &[
     &crate::integer::divide::Divide,
     &crate::integer::carry::Carry,
     &crate::vector::shuffle::Shuffle,
+    &crate::vector::gather::Gather,
 ];
 
 /// The kernel with this id.

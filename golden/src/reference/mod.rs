@@ -16,6 +16,7 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("integer.divide", integer::divide::words),
     ("integer.carry", integer::carry::words),
     ("vector.shuffle", vector::shuffle::words),
+    ("vector.gather", vector::gather::words),
 ];
 
 /// The right output of `case`, computed now; `None` for an unknown kernel.

@@ -5,6 +5,8 @@ use kernels::Variant;
 mod integer_carry;
 mod integer_divide;
 mod integer_multiply;
+mod vector_gather;
+mod vector_shuffle;
 
 /// The bare loop for one kernel and variant.
 pub struct Yardstick {
@@ -20,7 +22,13 @@ pub struct Yardstick {
 
 /// Every yardstick that this CPU can run.
 pub fn all() -> Vec<Yardstick> {
-    [integer_multiply::yardsticks(), integer_divide::yardsticks(), integer_carry::yardsticks()]
+    [
+        integer_multiply::yardsticks(),
+        integer_divide::yardsticks(),
+        integer_carry::yardsticks(),
+        vector_shuffle::yardsticks(),
+        vector_gather::yardsticks(),
+    ]
         .into_iter()
         .flatten()
         .collect()
