@@ -12,7 +12,7 @@ fn zip<const SIZE: usize>(a: &[u8; 32], b: &[u8; 32], start: usize) -> Bytes {
     Bytes(Block(std::array::from_fn(|i| {
         let (lane, at) = (i & 16, i & 15);
         let from = lane + start + at / (2 * SIZE) * SIZE + at % SIZE;
-        if at / SIZE & 1 == 0 { a[from] } else { b[from] }
+        if (at / SIZE) & 1 == 0 { a[from] } else { b[from] }
     })))
 }
 
@@ -116,7 +116,7 @@ impl Blocks for Bytes {
     fn pack(self, other: Self) -> Self {
         Bytes(Block(std::array::from_fn(|i| {
             let from = if i & 8 == 0 { &self.0.0 } else { &other.0.0 };
-            let at = i & 16 | 2 * (i & 7);
+            let at = (i & 16) + 2 * (i & 7);
             i16::from_le_bytes([from[at], from[at + 1]]).clamp(0, 255) as u8
         })))
     }

@@ -12,11 +12,12 @@
 //! # Reading a mismatch
 //! Output words are a (16, zero-extended), b (8), c (8), d (16, zero-extended), e (8). In words 0 to 31 a wrong load
 //! shows alone: `difference`, actual less expected (mod 2³² in a), is element read less element due. Its low 16 bits,
-//! taken as signed, are the distance from the right place in units of four bytes: times 4 the wrong offset in bytes;
-//! of b and c the distance is even, for whole words. No distance inside the table (less than 2n), or an odd one in b
-//! or c, speaks for corrupted data or a misaligned load, as does a difference that is
-//! elements\[j + distance\] − elements\[j\] for no j: the high bits single out j among all places. Two lanes with
-//! opposite differences have exchanged their elements. Words 32 to 55 tell that something was wrong, no longer what.
+//! taken as signed, are the distance from the right place in units of four bytes: times 4 the wrong offset in bytes.
+//! Where the high bits fit too, that is where element\[j + distance\] − element\[j\] is the difference for some j, a
+//! wrong place was read; in b and c, with 32 random bits, no more than one j does so but for coincidence, in a, with 16,
+//! few do. A difference that fits nowhere, a distance outside the table (2n or more) and an odd one in b or c (whole
+//! words are two units apart) speak for corrupted data or a misaligned load. Two lanes with opposite differences have
+//! exchanged their elements. Words 32 to 55 tell that something was wrong, no longer what.
 //!
 //! Operands, in stream order: key (low 16 bits of a word); four turns (low 32 bits); starts of d (8 words, low half
 //! first) and e (8); the indices (1,024 words, low half first); the table's n words, to be tagged. n follows from the
@@ -81,26 +82,7 @@ impl Kernel for Gather {
     }
 
     fn prepare(&self, case: &Case, proof: Proof) -> Box<dyn Ready> {
-        assert!(self.sizes().contains(&case.size), "no size of this kernel");
-        let words = 128 * (case.size.0 - BESIDES) as usize;
-        let mut operands = Operands::new(case);
-        let key = operands.word() as u32;
-        let turns = std::array::from_fn(|_| operands.word() as u32);
-        let mut halves = || -> [u32; 16] {
-            let words: [u64; 8] = std::array::from_fn(|_| operands.word());
-            std::array::from_fn(|l| (words[l / 2] >> (32 * (l % 2))) as u32)
-        };
-        let half = halves();
-        let full = std::array::from_fn(|_| operands.word());
-        let mut halves = || -> [u32; 16] {
-            let words: [u64; 8] = std::array::from_fn(|_| operands.word());
-            std::array::from_fn(|l| (words[l / 2] >> (32 * (l % 2))) as u32)
-        };
-        let indices = (0..VECTORS).map(|_| halves()).collect();
-        let tag = |j: usize| u64::from((j as u32).wrapping_add(key) & 0xffff);
-        let table =
-            (0..words).map(|i| operands.word() & !0x0000_ffff_0000_ffff | tag(2 * i) | tag(2 * i + 1) << 32).collect();
-        operands.finish(1 + PASSES + 16 + 8 * VECTORS + words);
+        let data = Data::draw(case);
         let run = match proof.variant_for(self.id()) {
             #[cfg(target_arch = "x86_64")]
             Variant::Avx2 => run_avx2,
@@ -108,7 +90,7 @@ impl Kernel for Gather {
             Variant::Avx512 => run_avx512,
             _ => portable,
         };
-        Box::new(Loads { data: Data { turns, half, full, indices, table }, run })
+        Box::new(Loads { data, run })
     }
 }
 
@@ -118,6 +100,30 @@ struct Data {
     full: [u64; 8],
     indices: Vec<[u32; 16]>,
     table: Vec<u64>,
+}
+
+/// Sixteen 32-bit halves of eight words.
+fn halves(operands: &mut Operands) -> [u32; 16] {
+    let words: [u64; 8] = std::array::from_fn(|_| operands.word());
+    std::array::from_fn(|l| (words[l / 2] >> (32 * (l % 2))) as u32)
+}
+
+impl Data {
+    fn draw(case: &Case) -> Data {
+        assert!(Gather.sizes().contains(&case.size), "no size of this kernel");
+        let words = 128 * (case.size.0 - BESIDES) as usize;
+        let mut operands = Operands::new(case);
+        let key = operands.word() as u32;
+        let turns = std::array::from_fn(|_| operands.word() as u32);
+        let half = halves(&mut operands);
+        let full = std::array::from_fn(|_| operands.word());
+        let indices = (0..VECTORS).map(|_| halves(&mut operands)).collect();
+        let tag = |j: usize| u64::from((j as u32).wrapping_add(key) & 0xffff);
+        let table =
+            (0..words).map(|i| operands.word() & !0x0000_ffff_0000_ffff | tag(2 * i) | tag(2 * i + 1) << 32).collect();
+        operands.finish(1 + PASSES + 16 + 8 * VECTORS + words);
+        Data { turns, half, full, indices, table }
+    }
 }
 
 struct Loads {
@@ -200,3 +206,33 @@ macro_rules! wrapped {
 
 wrapped!(avx2 run_avx2 TwoYmm "avx2");
 wrapped!(avx512 run_avx512 OneZmm "avx2,avx512f");
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::kernel::Seed;
+
+    /// What the head says of reading a mismatch, on every place of the small table read wrongly by some distance.
+    #[test]
+    fn a_difference_tells_the_distance() {
+        let data = Data::draw(&Case { kernel: "vector.gather", seed: Seed(5), size: Size(16 + BESIDES) });
+        let element = |j: usize| (data.table[j / 2] >> (32 * (j % 2))) as u32;
+        let (count, words) = (2 * data.table.len(), &data.table);
+        for due in 0..count {
+            let read = (due * 769 + 331) % count;
+            let difference = element(read).wrapping_sub(element(due));
+            assert_eq!(isize::from(difference as u16 as i16), read as isize - due as isize);
+        }
+        for due in 0..words.len() {
+            let read = (due * 769 + 331) % words.len();
+            let difference = words[read].wrapping_sub(words[due]);
+            let distance = isize::from(difference as u16 as i16);
+            assert_eq!(distance, 2 * (read as isize - due as isize));
+            let fits = |&j: &usize| {
+                let other = j.checked_add_signed(distance / 2).and_then(|o| words.get(o));
+                other.is_some_and(|o| o.wrapping_sub(words[j]) == difference)
+            };
+            assert_eq!((0..words.len()).filter(fits).collect::<Vec<_>>(), [due]);
+        }
+    }
+}

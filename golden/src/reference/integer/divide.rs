@@ -60,7 +60,7 @@ pub fn words(case: &Case) -> Vec<u64> {
         let keep = bit_length(wide) - 1;
         for x in &mut chains {
             let high = if keep == 0 { 0 } else { *x >> (64 - keep) };
-            let low = (*x << 32 | *x >> 32) ^ w[1];
+            let low = x.rotate_right(32) ^ w[1];
             absorb(x, divide(high, low, wide));
             absorb(x, divide(0, *x, long));
             absorb(x, divide_signed(*x, signed));
@@ -88,7 +88,7 @@ mod tests {
                 state
             };
             let d = next() >> (i % 64) | 1;
-            let (high, low) = (u64::try_from(u128::from(next()) * u128::from(d) >> 64).expect("below d"), next());
+            let (high, low) = (u64::try_from((u128::from(next()) * u128::from(d)) >> 64).expect("below d"), next());
             let (q, r) = divide(high, low, d);
             assert!(r < d);
             assert_eq!(u128::from(q) * u128::from(d) + u128::from(r), u128::from(high) << 64 | u128::from(low));
