@@ -69,7 +69,7 @@ impl Kernel for Shuffle {
         {
             use crate::isa::Feature;
             &[
-                Build { variant: Variant::Portable, needs: &[], marks: &["punpck"], proven: Proven::Hardware },
+                Build { variant: Variant::Portable, needs: &[], marks: &["movz"], proven: Proven::Hardware },
                 Build {
                     variant: Variant::Avx2,
                     needs: &[Feature::Avx2],
