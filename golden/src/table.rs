@@ -11,6 +11,13 @@ use sha2::{Digest, Sha256};
 /// Seeds 0 … n−1 are in the tables for each listed (kernel, size in KiB, n). A test holds this against the catalogue.
 pub static PLAN: &[(&str, &[(u32, u64)])] =
     &[("integer.multiply", &[(9, 64)]), ("fma.chain32", &[(22, 64)]), ("fma.chain64", &[(22, 64)])];
+pub static PLAN: &[(&str, &[(u32, u64)])] = &[
+    ("integer.multiply", &[(9, 64)]),
+    ("integer.divide", &[(6, 64)]),
+    ("integer.carry", &[(25, 64)]),
+    ("vector.shuffle", &[(13, 64)]),
+    ("vector.gather", &[(25, 64), (265, 64)]),
+];
 
 macro_rules! embed {
     ($($id:literal),* $(,)?) => {
@@ -20,6 +27,8 @@ macro_rules! embed {
 
 /// Every embedded table's text by kernel id.
 pub static TABLES: &[(&str, &str)] = embed!["integer.multiply", "fma.chain32", "fma.chain64",];
+pub static TABLES: &[(&str, &str)] =
+    embed!["integer.multiply", "integer.divide", "integer.carry", "vector.shuffle", "vector.gather",];
 
 /// SHA-256 of each table, in the format of `sha256sum`.
 pub static PINS: &str = include_str!("../tables/SHA256SUMS");

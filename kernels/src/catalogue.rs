@@ -5,6 +5,13 @@ use crate::kernel::Kernel;
 /// Every kernel, by family and then name.
 pub static KERNELS: &[&dyn Kernel] =
     &[&crate::integer::multiply::Multiply, &crate::fma::chain32::Chain32, &crate::fma::chain64::Chain64];
+pub static KERNELS: &[&dyn Kernel] = &[
+    &crate::integer::multiply::Multiply,
+    &crate::integer::divide::Divide,
+    &crate::integer::carry::Carry,
+    &crate::vector::shuffle::Shuffle,
+    &crate::vector::gather::Gather,
+];
 
 /// The kernel with this id.
 pub fn find(id: &str) -> Option<&'static dyn Kernel> {

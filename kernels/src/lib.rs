@@ -1,5 +1,6 @@
 //! What a core is made to do: deterministic computations without IO, clock or threads, knowing no golden value.
 
+mod blocks;
 pub mod catalogue;
 pub mod compare;
 pub mod fma;
@@ -8,5 +9,6 @@ pub mod isa;
 pub mod kernel;
 pub mod lanes;
 pub mod operands;
+pub mod vector;
 
 pub use kernel::{Build, Case, Kernel, Proven, Ready, Seed, Size, Variant, Work};

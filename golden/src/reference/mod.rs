@@ -4,6 +4,7 @@
 pub mod chacha;
 pub mod fma;
 pub mod integer;
+pub mod vector;
 
 use kernels::Case;
 
@@ -15,6 +16,10 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("integer.multiply", integer::multiply::words),
     ("fma.chain32", fma::chain32::words),
     ("fma.chain64", fma::chain64::words),
+    ("integer.divide", integer::divide::words),
+    ("integer.carry", integer::carry::words),
+    ("vector.shuffle", vector::shuffle::words),
+    ("vector.gather", vector::gather::words),
 ];
 
 /// The right output of `case`, computed now; `None` for an unknown kernel.

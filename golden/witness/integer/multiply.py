@@ -11,5 +11,6 @@ def words(seed: int, size: int) -> list[int]:
     chains = stream.words(8)
     for m in stream.words(1024):
         m |= 1
-        chains = [(p & MASK ^ p >> 64) + m & MASK for p in (x * m for x in chains)]
+        products = [x * m for x in chains]
+        chains = [low + (before >> 64) & MASK for low, before in zip(products, products[-1:] + products[:-1])]
     return chains

@@ -1,3 +1,5 @@
 //! Integer units: multiplier, divider, carry chains.
 
+pub mod carry;
+pub mod divide;
 pub mod multiply;

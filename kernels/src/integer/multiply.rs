@@ -1,8 +1,9 @@
 //! `integer.multiply`: full-width 64 × 64 → 128 bit products, both halves consumed.
 //!
-//! Eight independent chains; step i multiplies every chain by the i-th multiplier m (odd) and folds the halves:
-//! x ← (low(x·m) ⊕ high(x·m)) + m mod 2⁶⁴. Each bit of the product reaches the next multiplicand, so a wrong bit of
-//! either half spreads and stays.
+//! Eight chains; step i multiplies every chain by the i-th multiplier m (odd) and adds each product's low half to the
+//! high half of the chain before it: xⱼ ← low(xⱼ·m) + high(xⱼ₋₁·m) mod 2⁶⁴, with x₋₁ for x₇. The halves of one product
+//! go to two chains, so no pair of errors within a product cancels, as it could if they were folded into one word. A
+//! wrong half always changes its chain, and a single wrong chain stays wrong: x ↦ low(x·m) is a bijection.
 //!
 //! Operands, in stream order: 8 starts, then 1,024 multipliers, each with its lowest bit set. Output: the 8 chains.
 
@@ -86,10 +87,13 @@ impl Ready for Chains {
 #[inline(always)]
 fn body(multipliers: &[u64], mut x: [u64; CHAINS]) -> [u64; CHAINS] {
     for &m in multipliers {
+        let mut carried = 0;
         for lane in &mut x {
             let product = u128::from(*lane) * u128::from(m);
-            *lane = (product as u64 ^ (product >> 64) as u64).wrapping_add(m);
+            *lane = (product as u64).wrapping_add(carried);
+            carried = (product >> 64) as u64;
         }
+        x[0] = x[0].wrapping_add(carried);
     }
     x
 }

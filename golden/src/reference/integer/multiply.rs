@@ -20,10 +20,28 @@ pub fn words(case: &Case) -> Vec<u64> {
     let mut chains = stream.words(8);
     for _ in 0..1024 {
         let m = stream.word() | 1;
-        for x in &mut chains {
-            let (low, high) = product(*x, m);
-            *x = (low ^ high).wrapping_add(m);
+        let products: Vec<(u64, u64)> = chains.iter().map(|&x| product(x, m)).collect();
+        for (j, x) in chains.iter_mut().enumerate() {
+            *x = products[j].0.wrapping_add(products[(j + 7) % 8].1);
         }
     }
     chains
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// Against the language's own 128-bit product, and (2⁶⁴ − 1)² = 2¹²⁸ − 2⁶⁵ + 1.
+    #[test]
+    fn full_products() {
+        assert_eq!(product(u64::MAX, u64::MAX), (1, u64::MAX - 1));
+        let mut x = 0x0123_4567_89ab_cdef_u64;
+        for _ in 0..10_000 {
+            let y = x.wrapping_mul(0xd134_2543_de82_ef95).wrapping_add(1);
+            let p = u128::from(x) * u128::from(y);
+            assert_eq!(product(x, y), (p as u64, (p >> 64) as u64), "{x:#x} {y:#x}");
+            x = y;
+        }
+    }
 }

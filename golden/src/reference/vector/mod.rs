@@ -1,0 +1,4 @@
+//! References of the vector family.
+
+pub mod gather;
+pub mod shuffle;
