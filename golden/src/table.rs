@@ -9,7 +9,14 @@ use serde::{Deserialize, Serialize};
 use sha2::{Digest, Sha256};
 
 /// Seeds 0 … n−1 are in the tables for each listed (kernel, size in KiB, n). A test holds this against the catalogue.
-pub static PLAN: &[(&str, &[(u32, u64)])] = &[("integer.multiply", &[(9, 64)])];
+pub static PLAN: &[(&str, &[(u32, u64)])] = &[
+    ("integer.multiply", &[(9, 64)]),
+    ("cipher.aes", &[(6, 64)]),
+    ("cipher.sha256", &[(16, 64)]),
+    ("cache.walk", &[(16, 64), (256, 64), (4096, 64)]),
+    ("memory.march", &[(32, 64), (1024, 64), (4096, 64)]),
+    ("memory.copy", &[(24, 64), (384, 64), (3072, 64)]),
+];
 
 macro_rules! embed {
     ($($id:literal),* $(,)?) => {
@@ -18,7 +25,8 @@ macro_rules! embed {
 }
 
 /// Every embedded table's text by kernel id.
-pub static TABLES: &[(&str, &str)] = embed!["integer.multiply",];
+pub static TABLES: &[(&str, &str)] =
+    embed!["integer.multiply", "cipher.aes", "cipher.sha256", "cache.walk", "memory.march", "memory.copy",];
 
 /// SHA-256 of each table, in the format of `sha256sum`.
 pub static PINS: &str = include_str!("../tables/SHA256SUMS");

@@ -3,7 +3,14 @@
 use crate::kernel::Kernel;
 
 /// Every kernel, by family and then name.
-pub static KERNELS: &[&dyn Kernel] = &[&crate::integer::multiply::Multiply];
+pub static KERNELS: &[&dyn Kernel] = &[
+    &crate::integer::multiply::Multiply,
+    &crate::cipher::aes::Aes,
+    &crate::cipher::sha256::Sha256,
+    &crate::cache::walk::Walk,
+    &crate::memory::march::March,
+    &crate::memory::copy::Copy,
+];
 
 /// The kernel with this id.
 pub fn find(id: &str) -> Option<&'static dyn Kernel> {

@@ -1,10 +1,14 @@
 //! What a core is made to do: deterministic computations without IO, clock or threads, knowing no golden value.
 
+pub mod aligned;
+pub mod cache;
 pub mod catalogue;
+pub mod cipher;
 pub mod compare;
 pub mod integer;
 pub mod isa;
 pub mod kernel;
+pub mod memory;
 pub mod operands;
 
 pub use kernel::{Build, Case, Kernel, Proven, Ready, Seed, Size, Variant, Work};

@@ -1,8 +1,11 @@
 //! Integer-only references, one a kernel, under the kernel's own file stem. `scripts/check-reference` holds the rules:
 //! no `f32`/`f64`, no SIMD, nothing of `kernels` but [`Case`].
 
+pub mod cache;
 pub mod chacha;
+pub mod cipher;
 pub mod integer;
+pub mod memory;
 
 use kernels::Case;
 
@@ -10,7 +13,14 @@ use kernels::Case;
 pub type Reference = fn(&Case) -> Vec<u64>;
 
 /// Every reference by kernel id.
-pub static REFERENCES: &[(&str, Reference)] = &[("integer.multiply", integer::multiply::words)];
+pub static REFERENCES: &[(&str, Reference)] = &[
+    ("integer.multiply", integer::multiply::words),
+    ("cipher.aes", cipher::aes::words),
+    ("cipher.sha256", cipher::sha256::words),
+    ("cache.walk", cache::walk::words),
+    ("memory.march", memory::march::words),
+    ("memory.copy", memory::copy::words),
+];
 
 /// The right output of `case`, computed now; `None` for an unknown kernel.
 pub fn words(case: &Case) -> Option<Vec<u64>> {
