@@ -1,0 +1,52 @@
+//! The platform's memory copy of one payload to each byte offset in turn, each followed by a vector comparison of both sides.
+
+use super::Yardstick;
+
+#[cfg(target_arch = "x86_64")]
+pub fn yardsticks() -> Vec<Yardstick> {
+    use std::arch::x86_64::*;
+    use std::hint::black_box;
+
+    use kernels::Variant;
+    use kernels::aligned;
+
+    const BYTES: usize = 12_160;
+    const SLOT: usize = 12_288;
+
+    #[target_feature(enable = "avx2")]
+    fn equal(a: &[u8], b: &[u8]) -> bool {
+        let mut differ = [_mm256_setzero_si256(); 2];
+        for (a, b) in a.as_chunks::<64>().0.iter().zip(b.as_chunks::<64>().0) {
+            for (i, differ) in differ.iter_mut().enumerate() {
+                // SAFETY: both chunks are 64 readable bytes
+                let (x, y) = unsafe {
+                    (_mm256_loadu_si256(a[32 * i..].as_ptr().cast()), _mm256_loadu_si256(b[32 * i..].as_ptr().cast()))
+                };
+                *differ = _mm256_or_si256(*differ, _mm256_xor_si256(x, y));
+            }
+        }
+        let differ = _mm256_or_si256(differ[0], differ[1]);
+        _mm256_testz_si256(differ, differ) == 1
+    }
+
+    if !is_x86_feature_detected!("avx2") {
+        return Vec::new();
+    }
+    let mut lines = aligned::lines(24);
+    let run = Box::new(move || {
+        let (low, high) = aligned::bytes_mut(&mut lines).split_at_mut(SLOT);
+        for offset in 0..64 {
+            let (from, to) = (&low[27 * offset % 64..][..BYTES], &mut high[offset..][..BYTES]);
+            to.copy_from_slice(black_box(from));
+            // SAFETY: avx2 was detected above
+            assert!(unsafe { equal(black_box(from), black_box(to)) });
+        }
+    });
+    // bytes read and written: once each by the copy, both sides by the comparison
+    vec![Yardstick { kernel: "memory.copy", variant: Variant::Avx2, units: (64 * 4 * BYTES) as u64, run }]
+}
+
+#[cfg(not(target_arch = "x86_64"))]
+pub fn yardsticks() -> Vec<Yardstick> {
+    Vec::new()
+}
