@@ -1,7 +1,7 @@
 """memory.copy by real moves of bytes: one bytearray, slices copied at the very offsets, every hop's source read back."""
 
 import numpy as np
-from memory.common_digest import Digests
+from memory.common_digest import closed
 from operands import Stream
 
 LIBRARIES = ["cryptography", "numpy"]
@@ -42,12 +42,8 @@ def words(seed: int, size: int) -> list[int]:
             moved.append(lines[::-1] if source < target < source + BYTES else lines)
             memory[target : target + BYTES] = loaded
     groups = np.stack(moved).reshape(GROUPS, -1, 8)
-    digests = Digests(starts + np.arange(GROUPS, dtype=np.uint64)[:, None])
-    for line in range(groups.shape[1]):
-        digests.push(groups[:, line])
-    last = Digests(starts + np.uint64(GROUPS))
-    for r in range(payloads):
-        source = at(r, rounds)
-        for line in np.frombuffer(memory[source : source + BYTES], dtype="<u8").reshape(LINES, 8):
-            last.push(line)
-    return [int(w) for w in np.concatenate([digests.finish().ravel(), last.finish()])]
+    begins = starts + np.arange(GROUPS, dtype=np.uint64)[:, None]
+    sources = [at(r, rounds) for r in range(payloads)]
+    last = np.frombuffer(b"".join(memory[s : s + BYTES] for s in sources), dtype="<u8").reshape(-1, 8)
+    digests = [*closed(begins, groups).ravel(), *closed(starts + np.uint64(GROUPS), last)]
+    return [int(w) for w in digests]

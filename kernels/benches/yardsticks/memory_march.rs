@@ -1,4 +1,4 @@
-//! Reads and writes of every line of a buffer, 32 bytes at a time, over the march's first footprint: the read is kept alive by
+//! Reads and writes of every line of a buffer, 32 bytes at a time, over the march's default footprint: the read is kept alive by
 //! one OR, the write comes from a register.
 
 use super::Yardstick;
@@ -11,8 +11,8 @@ pub fn yardsticks() -> Vec<Yardstick> {
     use kernels::Variant;
     use kernels::aligned::{self, Line};
 
-    const KIB: u32 = 32;
-    const PASSES: usize = 15;
+    const KIB: u32 = 1024;
+    const PASSES: usize = 2;
 
     #[target_feature(enable = "avx2")]
     fn pass(lines: &mut [Line]) {

@@ -49,7 +49,7 @@ impl Kernel for Walk {
     }
 
     fn sizes(&self) -> &'static [Size] {
-        &[Size(16), Size(256), Size(4096)]
+        &[Size(256), Size(16), Size(4096)]
     }
 
     fn output_words(&self, size: Size) -> usize {

@@ -3,7 +3,7 @@
 
 use std::arch::aarch64::*;
 
-use super::sha256::{K, State};
+use super::sha256::{CHAINS, K, State};
 
 #[inline]
 #[target_feature(enable = "neon,sha2")]
@@ -43,15 +43,16 @@ fn compress(abcd: &mut uint32x4_t, efgh: &mut uint32x4_t, block: &[u8; 64]) {
     *efgh = vaddq_u32(*efgh, before.1);
 }
 
-/// Runs both states over both messages, block by block.
+/// Runs every state over its message, block by block; all messages have the same whole number of blocks.
 #[inline]
 #[target_feature(enable = "neon,sha2")]
-pub fn compress_two(states: &mut [State; 2], messages: [&[u8]; 2]) {
-    let mut halves = [0, 1].map(|i: usize| (load(&states[i]), load(&states[i][4..])));
-    for (block0, block1) in messages[0].as_chunks::<64>().0.iter().zip(messages[1].as_chunks::<64>().0) {
-        let [(abcd0, efgh0), (abcd1, efgh1)] = &mut halves;
-        compress(abcd0, efgh0, block0);
-        compress(abcd1, efgh1, block1);
+pub fn compress_all(states: &mut [State; CHAINS], messages: [&[u8]; CHAINS]) {
+    let blocks = messages.map(|m| m.as_chunks::<64>().0);
+    let mut halves = [0, 1, 2, 3].map(|i: usize| (load(&states[i]), load(&states[i][4..])));
+    for i in 0..blocks[0].len() {
+        for ((abcd, efgh), blocks) in halves.iter_mut().zip(blocks) {
+            compress(abcd, efgh, &blocks[i]);
+        }
     }
     for (state, (abcd, efgh)) in states.iter_mut().zip(halves) {
         // SAFETY: the state is 32 writable bytes

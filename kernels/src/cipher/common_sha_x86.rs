@@ -1,16 +1,30 @@
-//! SHA-256 by the x86 SHA extensions, two chains interleaved: one chain alone waits for the latency of its rounds.
+//! SHA-256 by the x86 SHA extensions, four chains in flight: one chain alone waits for the latency of its rounds.
 //!
-//! `sha256rnds2` takes the state as (a, b, e, f) and (c, d, g, h), highest lane first, and makes two rounds.
+//! `sha256rnds2` takes the state as (a, b, e, f) and (c, d, g, h), highest lane first, and makes two rounds. The message
+//! schedule of a block depends on nothing but the block, so it is made first, with the constants added, and the rounds then
+//! read it from memory: four chains' states and schedules together would not fit in 16 registers.
 
 use std::arch::x86_64::*;
 
-use super::sha256::{K, State};
+use super::sha256::{CHAINS, K, State};
 
+/// W_t + K_t of one block.
+#[repr(align(16))]
+struct Schedule([u32; 64]);
+
+/// Four words of `from`.
 #[inline]
 #[target_feature(enable = "sha,ssse3,sse4.1")]
 fn load(from: &[u32; 4]) -> __m128i {
     // SAFETY: the array is 16 readable bytes
     unsafe { _mm_loadu_si128(from.as_ptr().cast()) }
+}
+
+#[inline]
+#[target_feature(enable = "sha,ssse3,sse4.1")]
+fn store(x: __m128i, to: &mut [u32; 4]) {
+    // SAFETY: the array is 16 writable bytes
+    unsafe { _mm_storeu_si128(to.as_mut_ptr().cast(), x) }
 }
 
 /// Four message words, each read big endian.
@@ -25,70 +39,70 @@ fn load_big_endian(from: &[u8; 16]) -> __m128i {
 
 #[inline]
 #[target_feature(enable = "sha,ssse3,sse4.1")]
-fn split(state: &State) -> (__m128i, __m128i) {
-    let [a, b, c, d, e, f, g, h] = state.map(|x| x as i32);
-    (_mm_set_epi32(a, b, e, f), _mm_set_epi32(c, d, g, h))
+fn make_schedule(block: &[u8; 64], schedule: &mut Schedule) {
+    let quarters = block.as_chunks::<16>().0;
+    let mut w = [
+        load_big_endian(&quarters[0]),
+        load_big_endian(&quarters[1]),
+        load_big_endian(&quarters[2]),
+        load_big_endian(&quarters[3]),
+    ];
+    let (to, k) = (schedule.0.as_chunks_mut::<4>().0, K.as_chunks::<4>().0);
+    for group in 0..16 {
+        store(_mm_add_epi32(w[0], load(&k[group])), &mut to[group]);
+        let sum = _mm_add_epi32(_mm_sha256msg1_epu32(w[0], w[1]), _mm_alignr_epi8::<4>(w[3], w[2]));
+        w = [w[1], w[2], w[3], _mm_sha256msg2_epu32(sum, w[3])];
+    }
+}
+
+/// One state in the two registers of `sha256rnds2`.
+#[derive(Clone, Copy)]
+struct Pair {
+    abef: __m128i,
+    cdgh: __m128i,
 }
 
 #[inline]
 #[target_feature(enable = "sha,ssse3,sse4.1")]
-fn join(abef: __m128i, cdgh: __m128i) -> State {
+fn split(state: &State) -> Pair {
+    let [a, b, c, d, e, f, g, h] = state.map(|x| x as i32);
+    Pair { abef: _mm_set_epi32(a, b, e, f), cdgh: _mm_set_epi32(c, d, g, h) }
+}
+
+#[inline]
+#[target_feature(enable = "sha,ssse3,sse4.1")]
+fn join(pair: Pair) -> State {
     let (mut low, mut high) = ([0u32; 4], [0u32; 4]);
-    // SAFETY: each array is 16 writable bytes
-    unsafe {
-        _mm_storeu_si128(low.as_mut_ptr().cast(), abef);
-        _mm_storeu_si128(high.as_mut_ptr().cast(), cdgh);
-    }
+    store(pair.abef, &mut low);
+    store(pair.cdgh, &mut high);
     [low[3], low[2], high[3], high[2], low[1], low[0], high[1], high[0]]
 }
 
-/// Four rounds on words that carry their constants already.
+/// Runs every state over its message; all messages have the same whole number of blocks.
 #[inline]
 #[target_feature(enable = "sha,ssse3,sse4.1")]
-fn four_rounds(abef: &mut __m128i, cdgh: &mut __m128i, words: __m128i) {
-    *cdgh = _mm_sha256rnds2_epu32(*cdgh, *abef, words);
-    *abef = _mm_sha256rnds2_epu32(*abef, *cdgh, _mm_shuffle_epi32::<0x0e>(words));
-}
-
-/// The four words that follow `w[0]`…`w[15]` in the schedule, `q` being the oldest group of the ring.
-#[inline]
-#[target_feature(enable = "sha,ssse3,sse4.1")]
-fn next_words(w: &[__m128i; 4], q: usize) -> __m128i {
-    let (w0, w4, w8, w12) = (w[q], w[(q + 1) % 4], w[(q + 2) % 4], w[(q + 3) % 4]);
-    let sum = _mm_add_epi32(_mm_sha256msg1_epu32(w0, w4), _mm_alignr_epi8::<4>(w12, w8));
-    _mm_sha256msg2_epu32(sum, w12)
-}
-
-/// Runs both states over both messages.
-#[inline]
-#[target_feature(enable = "sha,ssse3,sse4.1")]
-pub fn compress_two(states: &mut [State; 2], messages: [&[u8]; 2]) {
-    let groups = K.as_chunks::<4>().0.as_chunks::<4>().0;
-    let [(mut abef0, mut cdgh0), (mut abef1, mut cdgh1)] = [split(&states[0]), split(&states[1])];
-    for (block0, block1) in messages[0].as_chunks::<64>().0.iter().zip(messages[1].as_chunks::<64>().0) {
-        let (quarters0, quarters1) = (block0.as_chunks::<16>().0, block1.as_chunks::<16>().0);
-        let mut w0: [__m128i; 4] = [0, 1, 2, 3].map(|q| load_big_endian(&quarters0[q]));
-        let mut w1: [__m128i; 4] = [0, 1, 2, 3].map(|q| load_big_endian(&quarters1[q]));
-        let before = (abef0, cdgh0, abef1, cdgh1);
-
-        for group in &groups[..3] {
-            for q in 0..4 {
-                let k = load(&group[q]);
-                four_rounds(&mut abef0, &mut cdgh0, _mm_add_epi32(w0[q], k));
-                four_rounds(&mut abef1, &mut cdgh1, _mm_add_epi32(w1[q], k));
-                w0[q] = next_words(&w0, q);
-                w1[q] = next_words(&w1, q);
+pub fn compress_all(states: &mut [State; CHAINS], messages: [&[u8]; CHAINS]) {
+    let blocks = messages.map(|m| m.as_chunks::<64>().0);
+    let mut pairs = [split(&states[0]), split(&states[1]), split(&states[2]), split(&states[3])];
+    let mut schedules = [const { Schedule([0; 64]) }; CHAINS];
+    for i in 0..blocks[0].len() {
+        for (chain, schedule) in schedules.iter_mut().enumerate() {
+            make_schedule(&blocks[chain][i], schedule);
+        }
+        let before = pairs;
+        for group in 0..16 {
+            for (pair, schedule) in pairs.iter_mut().zip(&schedules) {
+                let words = load(&schedule.0.as_chunks::<4>().0[group]);
+                pair.cdgh = _mm_sha256rnds2_epu32(pair.cdgh, pair.abef, words);
+                pair.abef = _mm_sha256rnds2_epu32(pair.abef, pair.cdgh, _mm_shuffle_epi32::<0x0e>(words));
             }
         }
-        for q in 0..4 {
-            let k = load(&groups[3][q]);
-            four_rounds(&mut abef0, &mut cdgh0, _mm_add_epi32(w0[q], k));
-            four_rounds(&mut abef1, &mut cdgh1, _mm_add_epi32(w1[q], k));
+        for (pair, old) in pairs.iter_mut().zip(before) {
+            pair.abef = _mm_add_epi32(pair.abef, old.abef);
+            pair.cdgh = _mm_add_epi32(pair.cdgh, old.cdgh);
         }
-        abef0 = _mm_add_epi32(abef0, before.0);
-        cdgh0 = _mm_add_epi32(cdgh0, before.1);
-        abef1 = _mm_add_epi32(abef1, before.2);
-        cdgh1 = _mm_add_epi32(cdgh1, before.3);
     }
-    *states = [join(abef0, cdgh0), join(abef1, cdgh1)];
+    for (state, pair) in states.iter_mut().zip(pairs) {
+        *state = join(pair);
+    }
 }

@@ -15,6 +15,8 @@ use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
 use crate::operands::Operands;
 
 const MESSAGES: usize = 8;
+/// Messages that a runner is given at once.
+pub(super) const CHAINS: usize = 4;
 const BLOCKS: usize = 32;
 /// Operand words of one message.
 const WORDS: usize = 255;
@@ -113,8 +115,8 @@ fn pad(message: &[u8]) -> Vec<u8> {
     padded
 }
 
-/// Runs two chaining values over two messages of the same whole number of blocks.
-type Runner = fn(&mut [State; 2], [&[u8]; 2]);
+/// Runs chaining values over messages of the same whole number of blocks.
+type Runner = fn(&mut [State; CHAINS], [&[u8]; CHAINS]);
 
 struct Messages {
     messages: Vec<Vec<u8>>,
@@ -123,9 +125,10 @@ struct Messages {
 
 impl Ready for Messages {
     fn run(&mut self, out: &mut [u64]) {
-        for (pair, out) in self.messages.as_chunks::<2>().0.iter().zip(out.as_chunks_mut::<8>().0) {
-            let mut states = [INITIAL; 2];
-            (self.run)(&mut states, [&pair[0], &pair[1]]);
+        let groups = self.messages.as_chunks::<CHAINS>().0;
+        for (group, out) in groups.iter().zip(out.chunks_exact_mut(4 * CHAINS)) {
+            let mut states = [INITIAL; CHAINS];
+            (self.run)(&mut states, group.each_ref().map(Vec::as_slice));
             for (word, halves) in out.iter_mut().zip(states.as_flattened().as_chunks::<2>().0) {
                 *word = u64::from(halves[0]) << 32 | u64::from(halves[1]);
             }
@@ -159,7 +162,7 @@ fn compress(state: &mut State, block: &[u8; 64]) {
 }
 
 #[inline(never)]
-fn portable(states: &mut [State; 2], messages: [&[u8]; 2]) {
+fn portable(states: &mut [State; CHAINS], messages: [&[u8]; CHAINS]) {
     for (state, message) in states.iter_mut().zip(messages) {
         for block in message.as_chunks::<64>().0 {
             compress(state, block);
@@ -170,15 +173,15 @@ fn portable(states: &mut [State; 2], messages: [&[u8]; 2]) {
 #[cfg(target_arch = "x86_64")]
 #[inline(never)]
 #[target_feature(enable = "sha,ssse3,sse4.1")]
-fn avx2(states: &mut [State; 2], messages: [&[u8]; 2]) {
-    common_sha_x86::compress_two(states, messages);
+fn avx2(states: &mut [State; CHAINS], messages: [&[u8]; CHAINS]) {
+    common_sha_x86::compress_all(states, messages);
 }
 
 #[cfg(target_arch = "aarch64")]
 #[inline(never)]
 #[target_feature(enable = "neon,sha2")]
-fn neon(states: &mut [State; 2], messages: [&[u8]; 2]) {
-    common_sha_arm::compress_two(states, messages);
+fn neon(states: &mut [State; CHAINS], messages: [&[u8]; CHAINS]) {
+    common_sha_arm::compress_all(states, messages);
 }
 
 /// The runner of a variant whose features a `Proof` has shown.
@@ -217,9 +220,9 @@ mod tests {
             ran += 1;
             for (message, digest) in PUBLISHED {
                 let padded = pad(message.as_bytes());
-                let mut states = [INITIAL; 2];
-                runner(variant)(&mut states, [&padded, &padded]);
-                assert_eq!(states, [digest; 2], "{variant} {message:?}");
+                let mut states = [INITIAL; CHAINS];
+                runner(variant)(&mut states, [&padded; CHAINS]);
+                assert_eq!(states, [digest; CHAINS], "{variant} {message:?}");
             }
         }
         assert!(ran > 0, "no variant ran");

@@ -1,8 +1,10 @@
-//! Digest of a sequence of lines, lane by lane: for each line v in the order of reading
-//! a ← rotl(a, 8) + v, b ← b + a; at the end one word a lane, a + F · b mod 2⁶⁴ with the odd constant F.
+//! Digest of a sequence of lines, lane by lane: for each line v in the order of reading u = v ⊕ (v >> 32), a ← a + u,
+//! b ← b + a mod 2⁶⁴; at the end one word a lane, a + F · b mod 2⁶⁴ with the odd constant F.
 //!
-//! Both steps are bijections, so one wrong line always changes a for good. Two wrong lines that cancel in a (opposite
-//! errors eight lines apart do) have kept it wrong in between, which b has summed up.
+//! b weights u by its distance from the end. All steps are bijections, so one wrong word always changes a for good. A flipped
+//! bit k ≥ 32 changes u by ±2^k ± 2^(k−32), one below by ±2^k; two flips that cancel in a are flips of the same bit, and then b
+//! differs, in its low bits, by their distance times 2^(k mod 32): never 0 for less than 2³² lines. Without u the flips of the
+//! top bits would be lost beyond 2⁶⁴. The differences of a and b, where they are known, give the place of a single wrong word.
 
 use super::common_lanes::Lanes;
 
@@ -27,7 +29,7 @@ impl<L: Lanes> Digest<L> {
     /// Takes one line in.
     #[inline(always)]
     pub fn push(&mut self, v: L::V) {
-        self.a = self.lanes.add(self.lanes.turn(self.a), v);
+        self.a = self.lanes.add(self.a, self.lanes.fold(v));
         self.b = self.lanes.add(self.b, self.a);
     }
 

@@ -13,8 +13,8 @@ pub trait Lanes: Copy {
     fn words(self, v: Self::V) -> [u64; 8];
     /// Lane-wise sum mod 2⁶⁴.
     fn add(self, a: Self::V, b: Self::V) -> Self::V;
-    /// Every lane rotated left by 8 bits.
-    fn turn(self, a: Self::V) -> Self::V;
+    /// In every lane the high half xored onto the low half: v ⊕ (v >> 32).
+    fn fold(self, a: Self::V) -> Self::V;
     /// Loads 64 bytes at any address.
     ///
     /// # Safety
@@ -64,8 +64,8 @@ impl Lanes for Words {
     }
 
     #[inline(always)]
-    fn turn(self, a: [u64; 8]) -> [u64; 8] {
-        a.map(|x| x.rotate_left(8))
+    fn fold(self, a: [u64; 8]) -> [u64; 8] {
+        a.map(|x| x ^ x >> 32)
     }
 
     #[inline(always)]

@@ -32,9 +32,9 @@ impl Lanes for Neon {
     }
 
     #[inline(always)]
-    fn turn(self, a: [uint64x2_t; 4]) -> [uint64x2_t; 4] {
+    fn fold(self, a: [uint64x2_t; 4]) -> [uint64x2_t; 4] {
         // SAFETY: Advanced SIMD is part of the aarch64 baseline
-        a.map(|x| unsafe { vsriq_n_u64::<56>(vshlq_n_u64::<8>(x), x) })
+        a.map(|x| unsafe { veorq_u64(x, vshrq_n_u64::<32>(x)) })
     }
 
     #[inline(always)]

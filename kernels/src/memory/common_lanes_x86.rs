@@ -41,15 +41,9 @@ impl Lanes for Avx2 {
     }
 
     #[inline(always)]
-    fn turn(self, a: [__m256i; 2]) -> [__m256i; 2] {
-        // byte k of a lane comes from byte k - 1
-        const HIGH: i64 = 0x0e0d_0c0b_0a09_080f;
-        const LOW: i64 = 0x0605_0403_0201_0007;
+    fn fold(self, a: [__m256i; 2]) -> [__m256i; 2] {
         // SAFETY: the caller of `Avx2::new` proved avx2
-        unsafe {
-            let order = _mm256_set_epi64x(HIGH, LOW, HIGH, LOW);
-            [_mm256_shuffle_epi8(a[0], order), _mm256_shuffle_epi8(a[1], order)]
-        }
+        a.map(|x| unsafe { _mm256_xor_si256(x, _mm256_srli_epi64::<32>(x)) })
     }
 
     #[inline(always)]
@@ -105,9 +99,9 @@ impl Lanes for Avx512 {
     }
 
     #[inline(always)]
-    fn turn(self, a: __m512i) -> __m512i {
+    fn fold(self, a: __m512i) -> __m512i {
         // SAFETY: the caller of `Avx512::new` proved avx512f
-        unsafe { _mm512_rol_epi64::<8>(a) }
+        unsafe { _mm512_xor_si512(a, _mm512_srli_epi64::<32>(a)) }
     }
 
     #[inline(always)]

@@ -62,7 +62,7 @@ impl Kernel for Copy {
     }
 
     fn sizes(&self) -> &'static [Size] {
-        &[Size(24), Size(384), Size(3072)]
+        &[Size(384), Size(24), Size(3072)]
     }
 
     fn output_words(&self, _size: Size) -> usize {
@@ -84,13 +84,13 @@ impl Kernel for Copy {
                 Build {
                     variant: Variant::Avx2,
                     needs: &[Feature::Avx2],
-                    marks: &["vmovdqu", "vpaddq", "vpshufb"],
+                    marks: &["vmovdqu", "vpaddq", "vpsrlq"],
                     proven: Proven::Hardware,
                 },
                 Build {
                     variant: Variant::Avx512,
                     needs: &[Feature::Avx512f],
-                    marks: &["vmovdqu", "vpaddq", "vprolq"],
+                    marks: &["vmovdqu", "vpaddq", "vpsrlq"],
                     proven: Proven::Unexecuted,
                 },
             ]
@@ -102,7 +102,7 @@ impl Kernel for Copy {
                 Build {
                     variant: Variant::Neon,
                     needs: &[Feature::Neon],
-                    marks: &["ld", "st", "add", "sri"],
+                    marks: &["ld", "st", "add", "ushr"],
                     proven: Proven::Emulator,
                 },
             ]

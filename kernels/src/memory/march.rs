@@ -72,7 +72,7 @@ impl Kernel for March {
     }
 
     fn sizes(&self) -> &'static [Size] {
-        &[Size(32), Size(1024), Size(4096)]
+        &[Size(1024), Size(32), Size(4096)]
     }
 
     fn output_words(&self, _size: Size) -> usize {
@@ -95,13 +95,13 @@ impl Kernel for March {
                 Build {
                     variant: Variant::Avx2,
                     needs: &[Feature::Avx2],
-                    marks: &["vmovdq", "vpaddq", "vpshufb"],
+                    marks: &["vmovdq", "vpaddq", "vpsrlq"],
                     proven: Proven::Hardware,
                 },
                 Build {
                     variant: Variant::Avx512,
                     needs: &[Feature::Avx512f],
-                    marks: &["vmovdq", "vpaddq", "vprolq"],
+                    marks: &["vmovdq", "vpaddq", "vpsrlq"],
                     proven: Proven::Unexecuted,
                 },
             ]
@@ -113,7 +113,7 @@ impl Kernel for March {
                 Build {
                     variant: Variant::Neon,
                     needs: &[Feature::Neon],
-                    marks: &["ld", "st", "add", "sri"],
+                    marks: &["ld", "st", "add", "ushr"],
                     proven: Proven::Emulator,
                 },
             ]

@@ -1,6 +1,6 @@
 //! The lane digest that the memory kernels share, one lane at a time.
 
-/// a ← rotl(a, 8) + v, b ← b + a; closed by a + F · b.
+/// a ← a + (v ⊕ ⌊v / 2³²⌋), b ← b + a; closed by a + F · b.
 #[derive(Clone, Copy)]
 pub struct Lane {
     a: u64,
@@ -15,7 +15,7 @@ impl Lane {
 
     /// Takes one word in.
     pub fn push(&mut self, v: u64) {
-        self.a = (self.a << 8 | self.a >> 56).wrapping_add(v);
+        self.a = self.a.wrapping_add(v ^ (v / (1 << 32)));
         self.b = self.b.wrapping_add(self.a);
     }
 
