@@ -112,7 +112,7 @@ impl Ready for Sections {
 
 #[inline(never)]
 fn portable(job: &Job, out: &mut [Block]) {
-    chains::<Soft, 2>(Soft, job, out);
+    chains::<Soft, 1>(Soft, job, out);
 }
 
 #[cfg(target_arch = "x86_64")]

@@ -1,16 +1,11 @@
 //! SHA-256 by the x86 SHA extensions, four chains in flight: one chain alone waits for the latency of its rounds.
 //!
-//! `sha256rnds2` takes the state as (a, b, e, f) and (c, d, g, h), highest lane first, and makes two rounds. The message
-//! schedule of a block depends on nothing but the block, so it is made first, with the constants added, and the rounds then
-//! read it from memory: four chains' states and schedules together would not fit in 16 registers.
+//! `sha256rnds2` takes the state as (a, b, e, f) and (c, d, g, h), highest lane first, and makes two rounds. Four states and
+//! message rings exceed the 16 registers; the rings' loads and stores cost less than the waiting.
 
 use std::arch::x86_64::*;
 
 use super::sha256::{CHAINS, K, State};
-
-/// W_t + K_t of one block.
-#[repr(align(16))]
-struct Schedule([u32; 64]);
 
 /// Four words of `from`.
 #[inline]
@@ -37,24 +32,6 @@ fn load_big_endian(from: &[u8; 16]) -> __m128i {
     _mm_shuffle_epi8(bytes, order)
 }
 
-#[inline]
-#[target_feature(enable = "sha,ssse3,sse4.1")]
-fn make_schedule(block: &[u8; 64], schedule: &mut Schedule) {
-    let quarters = block.as_chunks::<16>().0;
-    let mut w = [
-        load_big_endian(&quarters[0]),
-        load_big_endian(&quarters[1]),
-        load_big_endian(&quarters[2]),
-        load_big_endian(&quarters[3]),
-    ];
-    let (to, k) = (schedule.0.as_chunks_mut::<4>().0, K.as_chunks::<4>().0);
-    for group in 0..16 {
-        store(_mm_add_epi32(w[0], load(&k[group])), &mut to[group]);
-        let sum = _mm_add_epi32(_mm_sha256msg1_epu32(w[0], w[1]), _mm_alignr_epi8::<4>(w[3], w[2]));
-        w = [w[1], w[2], w[3], _mm_sha256msg2_epu32(sum, w[3])];
-    }
-}
-
 /// One state in the two registers of `sha256rnds2`.
 #[derive(Clone, Copy)]
 struct Pair {
@@ -78,23 +55,51 @@ fn join(pair: Pair) -> State {
     [low[3], low[2], high[3], high[2], low[1], low[0], high[1], high[0]]
 }
 
+/// Four rounds on words that carry their constants already.
+#[inline]
+#[target_feature(enable = "sha,ssse3,sse4.1")]
+fn four_rounds(pair: &mut Pair, words: __m128i) {
+    pair.cdgh = _mm_sha256rnds2_epu32(pair.cdgh, pair.abef, words);
+    pair.abef = _mm_sha256rnds2_epu32(pair.abef, pair.cdgh, _mm_shuffle_epi32::<0x0e>(words));
+}
+
+/// Replaces the oldest four words of the ring, group `q`, by the four that follow in the schedule.
+#[inline]
+#[target_feature(enable = "sha,ssse3,sse4.1")]
+fn next_words(w: &mut [__m128i; 4], q: usize) {
+    let (w4, w8, w12) = (w[(q + 1) % 4], w[(q + 2) % 4], w[(q + 3) % 4]);
+    let sum = _mm_add_epi32(_mm_sha256msg1_epu32(w[q], w4), _mm_alignr_epi8::<4>(w12, w8));
+    w[q] = _mm_sha256msg2_epu32(sum, w12);
+}
+
 /// Runs every state over its message; all messages have the same whole number of blocks.
 #[inline]
 #[target_feature(enable = "sha,ssse3,sse4.1")]
 pub fn compress_all(states: &mut [State; CHAINS], messages: [&[u8]; CHAINS]) {
+    let k = K.as_chunks::<4>().0;
     let blocks = messages.map(|m| m.as_chunks::<64>().0);
     let mut pairs = [split(&states[0]), split(&states[1]), split(&states[2]), split(&states[3])];
-    let mut schedules = [const { Schedule([0; 64]) }; CHAINS];
     for i in 0..blocks[0].len() {
-        for (chain, schedule) in schedules.iter_mut().enumerate() {
-            make_schedule(&blocks[chain][i], schedule);
-        }
         let before = pairs;
-        for group in 0..16 {
-            for (pair, schedule) in pairs.iter_mut().zip(&schedules) {
-                let words = load(&schedule.0.as_chunks::<4>().0[group]);
-                pair.cdgh = _mm_sha256rnds2_epu32(pair.cdgh, pair.abef, words);
-                pair.abef = _mm_sha256rnds2_epu32(pair.abef, pair.cdgh, _mm_shuffle_epi32::<0x0e>(words));
+        let mut w = [[_mm_setzero_si128(); 4]; CHAINS];
+        for (w, blocks) in w.iter_mut().zip(blocks) {
+            for (w, quarter) in w.iter_mut().zip(blocks[i].as_chunks::<16>().0) {
+                *w = load_big_endian(quarter);
+            }
+        }
+        for k in &k.as_chunks::<4>().0[..3] {
+            for q in 0..4 {
+                let constants = load(&k[q]);
+                for (pair, w) in pairs.iter_mut().zip(&mut w) {
+                    four_rounds(pair, _mm_add_epi32(w[q], constants));
+                    next_words(w, q);
+                }
+            }
+        }
+        for (q, k) in k[12..].iter().enumerate() {
+            let constants = load(k);
+            for (pair, w) in pairs.iter_mut().zip(&w) {
+                four_rounds(pair, _mm_add_epi32(w[q], constants));
             }
         }
         for (pair, old) in pairs.iter_mut().zip(before) {
