@@ -283,3 +283,104 @@ fn runner(variant: Variant) -> Runner {
         _ => portable,
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// A. J. van de Goor, "Using march tests to test SRAMs", IEEE Design & Test 10(1), 1993, March C− (from memory).
+    #[test]
+    fn elements_are_the_published_ones() {
+        let one = |e: &Element| {
+            let value = |name: &str, v: Option<Value>| v.map(|v| format!("{name}{}", usize::from(v == One)));
+            let operations: Vec<String> = [value("r", e.read), value("w", e.write)].into_iter().flatten().collect();
+            // an element without both operations may run either way
+            let order = if operations.len() < 2 {
+                '⇕'
+            } else if e.down {
+                '⇓'
+            } else {
+                '⇑'
+            };
+            format!("{order}({})", operations.join(","))
+        };
+        let text: Vec<String> = ELEMENTS.iter().map(one).collect();
+        assert_eq!(text.join(";"), "⇕(w0);⇑(r0,w1);⇑(r1,w0);⇓(r0,w1);⇓(r1,w0);⇕(r0)");
+    }
+
+    const CELLS: usize = 6;
+
+    /// Whether some read of the elements gives another value than the one that it names, in cells that `write` alters.
+    fn detects(initial: [bool; CELLS], write: impl Fn(&mut [bool; CELLS], usize, bool)) -> bool {
+        let mut cells = initial;
+        ELEMENTS.iter().any(|e| {
+            let mut order: Vec<usize> = (0..CELLS).collect();
+            if e.down {
+                order.reverse();
+            }
+            order.into_iter().any(|i| {
+                let wrong = e.read.is_some_and(|v| cells[i] != (v == One));
+                if let Some(v) = e.write {
+                    write(&mut cells, i, v == One);
+                }
+                wrong
+            })
+        })
+    }
+
+    /// What the test is published to find: stuck-at, transition, and inversion, idempotent and state coupling faults, whatever
+    /// the cells held before.
+    #[test]
+    fn every_fault_of_the_published_classes_is_detected() {
+        for initial in (0..1 << CELLS).map(|bits: usize| std::array::from_fn(|i| bits >> i & 1 == 1)) {
+            assert!(!detects(initial, |cells, i, v| cells[i] = v), "a sound memory passes");
+            for victim in 0..CELLS {
+                for value in [false, true] {
+                    let mut stuck = initial;
+                    stuck[victim] = value;
+                    assert!(detects(stuck, |cells, i, v| cells[i] = if i == victim { value } else { v }), "stuck at");
+                    let transition = |cells: &mut [bool; CELLS], i: usize, v: bool| {
+                        cells[i] = if i == victim && v == value && cells[i] != value { cells[i] } else { v };
+                    };
+                    assert!(detects(initial, transition), "no transition to {value} in {victim}");
+                    for aggressor in (0..CELLS).filter(|a| *a != victim) {
+                        for (name, effect) in
+                            [("inversion", None), ("idempotent", Some(false)), ("idempotent", Some(true))]
+                        {
+                            let coupled = |cells: &mut [bool; CELLS], i: usize, v: bool| {
+                                let moved = i == aggressor && cells[i] != v && v == value;
+                                cells[i] = v;
+                                if moved {
+                                    cells[victim] = effect.unwrap_or(!cells[victim]);
+                                }
+                            };
+                            assert!(detects(initial, coupled), "{name} {aggressor} to {victim}");
+                        }
+                        for forced in [false, true] {
+                            let state = |cells: &mut [bool; CELLS], i: usize, v: bool| {
+                                cells[i] = v;
+                                if cells[aggressor] == value {
+                                    cells[victim] = forced;
+                                }
+                            };
+                            assert!(detects(initial, state), "state {aggressor} to {victim}");
+                        }
+                    }
+                }
+            }
+        }
+    }
+
+    #[test]
+    fn a_wrong_line_shows_in_its_half_and_lane_alone() {
+        let ground = Background { start: [11, 22, 33, 44, 55, 66, 77, 88], step: 0x9e37_79b9_7f4a_7c15 };
+        let [first, last] = [ELEMENTS[0], ELEMENTS[5]];
+        let mut lines = aligned::lines(1);
+        element(Words, first, &mut lines, 0, &ground, [0; 8]);
+        let right = element(Words, last, &mut lines, 0, &ground, [0; 8]);
+        lines[9].0[5] ^= 1 << 40;
+        let wrong = element(Words, last, &mut lines, 0, &ground, [0; 8]);
+        let differing: Vec<usize> = (0..8).filter(|l| right[*l] != wrong[*l]).collect();
+        assert_eq!(differing, [5]);
+    }
+}
