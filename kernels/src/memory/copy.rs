@@ -252,3 +252,38 @@ fn runner(variant: Variant) -> Runner {
         _ => portable,
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn path_visits_every_offset_as_source_and_target_and_moves_by_every_distance() {
+        let places: Vec<_> = (0..PATH).map(place).collect();
+        for offset in 0..64 {
+            assert!(places[..64].contains(&(offset % 2, offset)), "offset {offset} between the sides");
+            assert!(places[64..].contains(&(1, offset)), "offset {offset} in a move over itself");
+        }
+        let mut moves: Vec<isize> = places[64..].windows(2).map(|w| w[1].1 as isize - w[0].1 as isize).collect();
+        moves.sort_by_key(|d| d.abs());
+        let expected: Vec<isize> = (1..64).map(|d| if d % 2 == 1 { d } else { -d }).collect();
+        assert_eq!(moves, expected);
+        // a place is left stale by the visit before the last on its side: never at the same offset, or old bytes would pass
+        for (t, (side, offset)) in places.iter().enumerate() {
+            let before = (1..PATH).map(|k| places[(t + PATH - k) % PATH]).find(|p| p.0 == *side);
+            assert_ne!(before, Some((*side, *offset)), "place {t}");
+        }
+    }
+
+    #[test]
+    fn a_move_over_itself_keeps_every_byte() {
+        for (from, to) in [(64, 65), (65, 64), (0, 63), (63, 0), (7, 7 + 4096), (4103, 7)] {
+            let mut lines = aligned::lines(24);
+            let bytes = aligned::bytes_mut(&mut lines);
+            bytes.iter_mut().enumerate().for_each(|(i, b)| *b = (i * 7 + i / 256) as u8);
+            let before = bytes[from..from + LINES * 64].to_vec();
+            hop(Words, bytes, from, to, &mut Digest::new(Words, [0; 8]));
+            assert!(bytes[to..to + LINES * 64] == before[..], "{from} to {to}");
+        }
+    }
+}

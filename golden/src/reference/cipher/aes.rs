@@ -13,7 +13,7 @@ fn times(mut a: u8, mut b: u8) -> u8 {
             product ^= a;
         }
         let carry = a >> 7;
-        a = a << 1 ^ carry * 0x1b;
+        a = (a << 1) ^ (carry * 0x1b);
         b >>= 1;
     }
     product
