@@ -5,6 +5,7 @@
 //! bit k ≥ 32 changes u by ±2^k ± 2^(k−32), one below by ±2^k; two flips that cancel in a are flips of the same bit, and then b
 //! differs, in its low bits, by their distance times 2^(k mod 32): never 0 for less than 2³² lines. Without u the flips of the
 //! top bits would be lost beyond 2⁶⁴. The differences of a and b, where they are known, give the place of a single wrong word.
+//! What may pass: two lines an even distance apart, in both of which bits k and k − 32 are flipped together (k near 63).
 
 use super::common_lanes::Lanes;
 

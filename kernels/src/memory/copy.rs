@@ -10,6 +10,9 @@
 //! all hops of all payloads are as [`SHAPES`] says, then reads every payload once more. What a hop loads is both stored and taken
 //! into a digest: each store is read by the next hop, and a wrong byte, once stored, is in every later digest.
 //!
+//! What a store overwrites are other bytes, as the place visited before on that side has another offset; only where a run enters
+//! a side once and last (one hop of 256 at 384 KiB, two of 1,024 at 3,072) are they the last run's equal ones.
+//!
 //! The hops are cut into 16 equal groups, group 16 is the last reading; the digest of `common_digest` starts at P_l + group and
 //! takes the lines in the order in which they are moved (last line first where a move goes up over itself).
 //!
