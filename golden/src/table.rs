@@ -17,6 +17,13 @@ pub static PLAN: &[(&str, &[(u32, u64)])] = &[
     ("integer.carry", &[(25, 64)]),
     ("vector.shuffle", &[(13, 64)]),
     ("vector.gather", &[(25, 64), (265, 64)]),
+pub static PLAN: &[(&str, &[(u32, u64)])] = &[
+    ("integer.multiply", &[(9, 64)]),
+    ("cipher.aes", &[(6, 64)]),
+    ("cipher.sha256", &[(16, 64)]),
+    ("cache.walk", &[(256, 64), (16, 64), (4096, 64)]),
+    ("memory.march", &[(1024, 64), (32, 64), (4096, 64)]),
+    ("memory.copy", &[(384, 64), (24, 64), (3072, 64)]),
 ];
 
 macro_rules! embed {
@@ -29,6 +36,8 @@ macro_rules! embed {
 pub static TABLES: &[(&str, &str)] = embed!["integer.multiply", "fma.chain32", "fma.chain64",];
 pub static TABLES: &[(&str, &str)] =
     embed!["integer.multiply", "integer.divide", "integer.carry", "vector.shuffle", "vector.gather",];
+pub static TABLES: &[(&str, &str)] =
+    embed!["integer.multiply", "cipher.aes", "cipher.sha256", "cache.walk", "memory.march", "memory.copy",];
 
 /// SHA-256 of each table, in the format of `sha256sum`.
 pub static PINS: &str = include_str!("../tables/SHA256SUMS");

@@ -11,6 +11,13 @@ pub static KERNELS: &[&dyn Kernel] = &[
     &crate::integer::carry::Carry,
     &crate::vector::shuffle::Shuffle,
     &crate::vector::gather::Gather,
+pub static KERNELS: &[&dyn Kernel] = &[
+    &crate::integer::multiply::Multiply,
+    &crate::cipher::aes::Aes,
+    &crate::cipher::sha256::Sha256,
+    &crate::cache::walk::Walk,
+    &crate::memory::march::March,
+    &crate::memory::copy::Copy,
 ];
 
 /// The kernel with this id.

@@ -1,13 +1,17 @@
 //! What a core is made to do: deterministic computations without IO, clock or threads, knowing no golden value.
 
 mod blocks;
+pub mod aligned;
+pub mod cache;
 pub mod catalogue;
+pub mod cipher;
 pub mod compare;
 pub mod fma;
 pub mod integer;
 pub mod isa;
 pub mod kernel;
 pub mod lanes;
+pub mod memory;
 pub mod operands;
 pub mod vector;
 

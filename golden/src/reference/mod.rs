@@ -1,10 +1,14 @@
 //! Integer-only references, one a kernel, under the kernel's own file stem. `scripts/check-reference` holds the rules:
 //! no `f32`/`f64`, no SIMD, nothing of `kernels` but [`Case`].
 
+pub mod cache;
 pub mod chacha;
 pub mod fma;
 pub mod integer;
 pub mod vector;
+pub mod cipher;
+pub mod integer;
+pub mod memory;
 
 use kernels::Case;
 
@@ -20,6 +24,11 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("integer.carry", integer::carry::words),
     ("vector.shuffle", vector::shuffle::words),
     ("vector.gather", vector::gather::words),
+    ("cipher.aes", cipher::aes::words),
+    ("cipher.sha256", cipher::sha256::words),
+    ("cache.walk", cache::walk::words),
+    ("memory.march", memory::march::words),
+    ("memory.copy", memory::copy::words),
 ];
 
 /// The right output of `case`, computed now; `None` for an unknown kernel.

@@ -1,0 +1,3 @@
+//! References of the cache family.
+
+pub mod walk;

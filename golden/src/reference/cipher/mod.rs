@@ -1,0 +1,4 @@
+//! References of the cipher family.
+
+pub mod aes;
+pub mod sha256;

@@ -1,0 +1,5 @@
+//! References of the memory family.
+
+pub mod common_digest;
+pub mod copy;
+pub mod march;
