@@ -3,7 +3,8 @@
 use crate::kernel::Kernel;
 
 /// Every kernel, by family and then name.
-pub static KERNELS: &[&dyn Kernel] = &[&crate::integer::multiply::Multiply];
+pub static KERNELS: &[&dyn Kernel] =
+    &[&crate::integer::multiply::Multiply, &crate::float::chain32::Chain32, &crate::float::chain64::Chain64];
 
 /// The kernel with this id.
 pub fn find(id: &str) -> Option<&'static dyn Kernel> {

@@ -2,9 +2,11 @@
 
 pub mod catalogue;
 pub mod compare;
+pub mod float;
 pub mod integer;
 pub mod isa;
 pub mod kernel;
+pub mod lanes;
 pub mod operands;
 
 pub use kernel::{Build, Case, Kernel, Proven, Ready, Seed, Size, Variant, Work};

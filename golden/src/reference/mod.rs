@@ -2,6 +2,7 @@
 //! no `f32`/`f64`, no SIMD, nothing of `kernels` but [`Case`].
 
 pub mod chacha;
+pub mod float;
 pub mod integer;
 
 use kernels::Case;
@@ -10,7 +11,11 @@ use kernels::Case;
 pub type Reference = fn(&Case) -> Vec<u64>;
 
 /// Every reference by kernel id.
-pub static REFERENCES: &[(&str, Reference)] = &[("integer.multiply", integer::multiply::words)];
+pub static REFERENCES: &[(&str, Reference)] = &[
+    ("integer.multiply", integer::multiply::words),
+    ("float.chain32", float::chain32::words),
+    ("float.chain64", float::chain64::words),
+];
 
 /// The right output of `case`, computed now; `None` for an unknown kernel.
 pub fn words(case: &Case) -> Option<Vec<u64>> {

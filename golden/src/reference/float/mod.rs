@@ -1,0 +1,5 @@
+//! Floating-point units, on softfloat.
+
+pub mod chain32;
+pub mod chain64;
+mod common_chain;
