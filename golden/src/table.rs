@@ -9,8 +9,12 @@ use serde::{Deserialize, Serialize};
 use sha2::{Digest, Sha256};
 
 /// Seeds 0 … n−1 are in the tables for each listed (kernel, size in KiB, n). A test holds this against the catalogue.
-pub static PLAN: &[(&str, &[(u32, u64)])] =
-    &[("integer.multiply", &[(9, 64)]), ("float.chain32", &[(21, 64)]), ("float.chain64", &[(21, 64)])];
+pub static PLAN: &[(&str, &[(u32, u64)])] = &[
+    ("integer.multiply", &[(9, 64)]),
+    ("float.chain32", &[(21, 64)]),
+    ("float.chain64", &[(21, 64)]),
+    ("float.convert", &[(18, 64)]),
+];
 
 macro_rules! embed {
     ($($id:literal),* $(,)?) => {
@@ -19,7 +23,7 @@ macro_rules! embed {
 }
 
 /// Every embedded table's text by kernel id.
-pub static TABLES: &[(&str, &str)] = embed!["integer.multiply", "float.chain32", "float.chain64",];
+pub static TABLES: &[(&str, &str)] = embed!["integer.multiply", "float.chain32", "float.chain64", "float.convert",];
 
 /// SHA-256 of each table, in the format of `sha256sum`.
 pub static PINS: &str = include_str!("../tables/SHA256SUMS");

@@ -3,8 +3,12 @@
 use crate::kernel::Kernel;
 
 /// Every kernel, by family and then name.
-pub static KERNELS: &[&dyn Kernel] =
-    &[&crate::integer::multiply::Multiply, &crate::float::chain32::Chain32, &crate::float::chain64::Chain64];
+pub static KERNELS: &[&dyn Kernel] = &[
+    &crate::integer::multiply::Multiply,
+    &crate::float::chain32::Chain32,
+    &crate::float::chain64::Chain64,
+    &crate::float::convert::Conversions,
+];
 
 /// The kernel with this id.
 pub fn find(id: &str) -> Option<&'static dyn Kernel> {

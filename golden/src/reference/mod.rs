@@ -15,6 +15,7 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("integer.multiply", integer::multiply::words),
     ("float.chain32", float::chain32::words),
     ("float.chain64", float::chain64::words),
+    ("float.convert", float::convert::words),
 ];
 
 /// The right output of `case`, computed now; `None` for an unknown kernel.

@@ -2,6 +2,8 @@
 
 pub mod chain32;
 pub mod chain64;
+mod common_boundary;
 mod common_chain;
 #[cfg(test)]
 mod common_persistence;
+pub mod convert;

@@ -4,7 +4,9 @@
 //! with a [`crate::isa::Proof`], and that is where the instructions end up. No method changes rounding or flushing modes.
 
 pub mod arithmetic;
+pub mod convert;
 mod f32;
 mod f64;
 
 pub use arithmetic::Arithmetic;
+pub use convert::Convert;
