@@ -14,6 +14,7 @@ pub static PLAN: &[(&str, &[(u32, u64)])] = &[
     ("float.chain32", &[(21, 64)]),
     ("float.chain64", &[(21, 64)]),
     ("float.convert", &[(18, 64)]),
+    ("float.powcast", &[(4, 64)]),
 ];
 
 macro_rules! embed {
@@ -23,7 +24,8 @@ macro_rules! embed {
 }
 
 /// Every embedded table's text by kernel id.
-pub static TABLES: &[(&str, &str)] = embed!["integer.multiply", "float.chain32", "float.chain64", "float.convert",];
+pub static TABLES: &[(&str, &str)] =
+    embed!["integer.multiply", "float.chain32", "float.chain64", "float.convert", "float.powcast",];
 
 /// SHA-256 of each table, in the format of `sha256sum`.
 pub static PINS: &str = include_str!("../tables/SHA256SUMS");

@@ -8,6 +8,7 @@ pub static KERNELS: &[&dyn Kernel] = &[
     &crate::float::chain32::Chain32,
     &crate::float::chain64::Chain64,
     &crate::float::convert::Conversions,
+    &crate::float::powcast::PowCast,
 ];
 
 /// The kernel with this id.

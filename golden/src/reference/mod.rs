@@ -16,6 +16,7 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("float.chain32", float::chain32::words),
     ("float.chain64", float::chain64::words),
     ("float.convert", float::convert::words),
+    ("float.powcast", float::powcast::words),
 ];
 
 /// The right output of `case`, computed now; `None` for an unknown kernel.

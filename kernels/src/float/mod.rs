@@ -7,3 +7,4 @@ mod common_chain;
 #[cfg(test)]
 mod common_persistence;
 pub mod convert;
+pub mod powcast;

@@ -4,3 +4,4 @@ pub mod chain32;
 pub mod chain64;
 mod common_chain;
 pub mod convert;
+pub mod powcast;
