@@ -9,7 +9,7 @@ from operands import Stream
 
 LIBRARIES = ["cryptography", "gmpy2"]
 ITEMS = 256
-PASSES = 8
+PASSES = 24
 MASK = (1 << 64) - 1
 
 

@@ -23,13 +23,21 @@ def operand(w: int, z: int):
     return gmpy2.div_2exp(mpfr(significand), -unit), -y if w >> 63 else y
 
 
+def fold(bits: int, integer: int) -> int:
+    f = 0
+    for word in [bits, integer] * 8:
+        f = (f << 7 & MASK | f >> 57) + word & MASK
+    return f
+
+
 def words(seed: int, size: int) -> list[int]:
     stream = Stream("float.powcast", seed, size)
     with gmpy2.context(BINARY64.context()):
         starts, rows = RECIPE.draw(stream, 8, False)
-        states = RECIPE.walk(starts, rows, 8)
+        states = RECIPE.walk(starts, rows, 48)
         powers = [(mpfr("1.1"), 16 * y) for y in PUBLISHED]
-        powers += [operand(*stream.words(2)) for _ in range(64 - len(PUBLISHED))]
+        powers += [operand(*stream.words(2)) for _ in range(48 - len(PUBLISHED))]
         results = [x ** gmpy2.div_2exp(mpfr(y), 4) for x, y in powers]
         integers = [int(gmpy2.trunc(r)) & MASK for r in results]
-        return [BINARY64.bits(r) for r in results] + integers + [BINARY64.bits(x) for x in states]
+        bits = [BINARY64.bits(r) for r in results]
+        return bits + integers + [fold(*pair) for pair in zip(bits, integers)] + [BINARY64.bits(x) for x in states]

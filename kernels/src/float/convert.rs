@@ -4,7 +4,7 @@
 //! rounding boundaries, in range and never NaN. A track's results are its memory image, read as 64-bit words (the first
 //! number lowest), eight words to a row. Per track and word position two sums modulo 2^64 run over the rows:
 //! s ← s + word, t ← t + s, so that an error's place counts and equal errors do not cancel. A run passes over each
-//! track 8 times in turn, the sums going on.
+//! track 24 times in turn, the sums going on.
 //!
 //! Operands, in stream order: 13 arrays of 256 numbers, two words a number; i32 results toward zero and to nearest
 //! share one array, and so do the two conversions from i32. Output, per track: 8 sums s, 8 sums t, the last word.
@@ -19,7 +19,7 @@ use crate::operands::Operands;
 const ITEMS: usize = 256;
 const BLOCKS: usize = ITEMS / BLOCK;
 const TRACKS: usize = 15;
-const PASSES: usize = 8;
+const PASSES: usize = 24;
 const ARRAYS: usize = 13;
 const WORDS: usize = 17;
 

@@ -18,12 +18,13 @@
 //! Its relative error is below 2^−90, so r.hi is the correctly rounded power wherever no midpoint of two doubles is
 //! nearer than that; the witness is MPFR's correctly rounded power, so every accepted case proves that it was.
 //!
-//! Before each power, one round of eight chains of `common_chain.rs` (bounded) runs in the variant's own registers; 64
-//! powers, the first 7 the published ones. Operands, in stream order: the 8 chains; then two words w, z for each of the
-//! other 57 powers. Bits 60–61 of w choose: 0, 1: x in [1, 9/8), |16y| < 4096; 2: x in [1, 2), |16y| < 961; 3: x in
+//! Before each power, one round of eight chains of `common_chain.rs` (bounded) runs in the variant's own registers. A run
+//! takes 48 powers, the first 7 the published ones, in 8 rounds. Operands, in stream order: the 8 chains; then two words w, z for each of the
+//! other 41 powers. Bits 60–61 of w choose: 0, 1: x in [1, 9/8), |16y| < 4096; 2: x in [1, 2), |16y| < 961; 3: x in
 //! [1/2, 1), |16y| < 961; |16y| is w modulo that bound, the sign of y bit 63 of w, x's fraction
 //! z's low bits.
-//! Output: the bits of the 64 powers, their integer parts, the 8 last states.
+//! Output: the bits of the last round's powers; their integer parts; for each power the fold of its bits and integer part
+//! in every round, f ← (f rotated left by 7) + word mod 2^64; the 8 last states.
 
 use super::common_chain::{Chains, DOUBLE, Operand, ROWS, walk, words_drawn};
 use crate::isa::Proof;
@@ -32,7 +33,9 @@ use crate::lanes::Arithmetic;
 use crate::operands::Operands;
 
 const CHAINS: usize = 8;
-const POWERS: usize = 64;
+const POWERS: usize = 48;
+const ROUNDS: usize = 8;
+const _: () = assert!(POWERS.is_multiple_of(ROWS), "every round starts at the first row");
 /// 1.1, and 16y of the published powers.
 const BASE: u64 = 0x3ff1_9999_9999_999a;
 const PUBLISHED: [i32; 7] = [53 * 16, 68 * 16, 3 * 16, 107 * 16, -3 * 16, 52 * 16, 78 * 16];
@@ -54,11 +57,11 @@ impl Kernel for PowCast {
     }
 
     fn output_words(&self, _size: Size) -> usize {
-        2 * POWERS + CHAINS
+        3 * POWERS + CHAINS
     }
 
     fn work(&self, _size: Size) -> Work {
-        Work { amount: POWERS as u64, unit: "power" }
+        Work { amount: (POWERS * ROUNDS) as u64, unit: "power" }
     }
 
     fn builds(&self) -> &'static [Build] {
@@ -157,7 +160,7 @@ impl Ready for Prepared {
     fn run(&mut self, out: &mut [u64]) {
         let mut x = *self.chains.start;
         (self.run)(&self.chains.rows, &mut x, &self.powers, out);
-        for (word, x) in out[2 * POWERS..].iter_mut().zip(x) {
+        for (word, x) in out[3 * POWERS..].iter_mut().zip(x) {
             *word = x.to_bits();
         }
     }
@@ -261,14 +264,21 @@ unsafe fn body<A: Arithmetic<Scalar = f64>, E: ProductError>(
     powers: &[(f64, i32)],
     out: &mut [u64],
 ) {
-    let (bits, integers) = out.split_at_mut(POWERS);
-    for (i, (base, sixteenths)) in powers.iter().enumerate() {
-        let row = i % ROWS;
-        // SAFETY: features by this function's contract
-        unsafe { walk::<A, CHAINS>(&rows[row..=row], x, 1) };
-        let result = pow::<E>(*base, *sixteenths);
-        bits[i] = result.to_bits();
-        integers[i] = result as i64 as u64;
+    let (results, folds) = out.split_at_mut(2 * POWERS);
+    let (bits, integers) = results.split_at_mut(POWERS);
+    folds.fill(0);
+    for _ in 0..ROUNDS {
+        for (i, (base, sixteenths)) in powers.iter().enumerate() {
+            let row = i % ROWS;
+            // SAFETY: features by this function's contract
+            unsafe { walk::<A, CHAINS>(&rows[row..=row], x, 1) };
+            let result = pow::<E>(*base, *sixteenths);
+            bits[i] = result.to_bits();
+            integers[i] = result as i64 as u64;
+            for word in [bits[i], integers[i]] {
+                folds[i] = folds[i].rotate_left(7).wrapping_add(word);
+            }
+        }
     }
 }
 

@@ -6,7 +6,7 @@ use crate::reference::chacha::Stream;
 use crate::softfloat::{Format, Round, convert, from_int, from_uint, to_i32, to_i64, to_u32};
 
 const ITEMS: usize = 256;
-const PASSES: usize = 8;
+const PASSES: usize = 24;
 const NEAR: Round = Round::NearestEven;
 const ZERO: Round = Round::TowardZero;
 

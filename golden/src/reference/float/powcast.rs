@@ -96,22 +96,25 @@ fn operand(w: u64, z: u64) -> (u64, i64) {
     (x, if w >> 63 == 1 { -y } else { y })
 }
 
-/// Bits of the powers, their integer parts, the chains' last states.
+/// Bits of the powers, their integer parts, the folds of both over all rounds, the chains' last states.
 pub fn words(case: &Case) -> Vec<u64> {
     let mut stream = Stream::new(case);
     let chains = RECIPE.draw(&mut stream, 8, false);
-    // 64 rows: each chain walks its 8 rows eight times
-    let states = RECIPE.walk(&chains, 8);
+    // a row before each of 48 powers in 8 rounds: each chain walks its 8 rows 48 times
+    let states = RECIPE.walk(&chains, 48);
     let base = soft::div(F, soft::from_uint(F, 11, NEAR).0, soft::from_uint(F, 10, NEAR).0, NEAR).0;
     let powers: Vec<u64> = PUBLISHED
         .iter()
         .map(|y| (base, 16 * y))
-        .chain((0..57).map(|_| {
+        .chain((0..41).map(|_| {
             let w = stream.word();
             operand(w, stream.word())
         }))
         .map(|(x, y)| pow(x, y))
         .collect();
-    let integers = powers.iter().map(|&p| soft::to_i64(F, p, Round::TowardZero).0 as u64);
-    powers.iter().copied().chain(integers).chain(states).collect()
+    let integers: Vec<u64> = powers.iter().map(|&p| soft::to_i64(F, p, Round::TowardZero).0 as u64).collect();
+    let folds = powers.iter().zip(&integers).map(|(&power, &integer)| {
+        [power, integer].repeat(8).into_iter().fold(0u64, |f, word| f.rotate_left(7).wrapping_add(word))
+    });
+    powers.iter().chain(&integers).copied().chain(folds).chain(states).collect()
 }

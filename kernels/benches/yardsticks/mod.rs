@@ -1,0 +1,42 @@
+//! What the hardware could do at best: for each kernel the bare loop of its instruction at peak throughput.
+//!
+//! A yardstick computes nothing of use and checks nothing. It has enough independent chains to fill the units, all its
+//! operands come through `black_box`, and so do its results.
+
+use kernels::{Variant, catalogue, isa};
+
+mod float_chain32;
+mod float_chain64;
+mod float_common;
+mod float_convert;
+mod float_powcast;
+
+/// The bare loop beside one variant of one kernel.
+pub struct Yardstick {
+    /// Catalogue id of the kernel that it belongs to.
+    pub kernel: &'static str,
+    /// The variant whose instructions it uses.
+    pub variant: Variant,
+    /// Units of the kernel's `work` in one call.
+    pub units: u64,
+    /// One call.
+    pub run: Box<dyn FnMut()>,
+}
+
+/// Whether this CPU has what `variant` of `kernel` needs: a yardstick is listed only then, so that it may use the same.
+pub fn available(kernel: &str, variant: Variant) -> bool {
+    catalogue::find(kernel).is_some_and(|k| isa::prove(k, variant).is_ok())
+}
+
+/// Every yardstick that can run here.
+pub fn all() -> Vec<Yardstick> {
+    [
+        float_chain32::yardsticks(),
+        float_chain64::yardsticks(),
+        float_convert::yardsticks(),
+        float_powcast::yardsticks(),
+    ]
+    .into_iter()
+    .flatten()
+    .collect()
+}
