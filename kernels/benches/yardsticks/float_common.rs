@@ -28,18 +28,19 @@ pub unsafe fn mix<A: Arithmetic, const K: usize>(near_one: A::Scalar, middle: A:
             next = next.mul(factor);
             next
         };
-        let mut sets: [[A; 6]; K] = std::array::from_fn(|_| std::array::from_fn(|_| fresh()));
+        let mut set = || -> [A; K] { std::array::from_fn(|_| fresh()) };
+        let (mut m, mut n, mut root, mut quotient, mut difference, mut sum) = (set(), set(), set(), set(), set(), set());
         for _ in 0..ROUNDS {
-            for [m, n, root, quotient, difference, sum] in &mut sets {
-                *m = m.mul(factor);
-                *n = n.mul(factor);
-                *root = root.mul(start).sqrt();
-                *quotient = quotient.div(factor);
-                *difference = difference.sub(factor);
-                *sum = sum.add(factor);
+            for k in 0..K {
+                m[k] = m[k].mul(factor);
+                n[k] = n[k].mul(factor);
+                root[k] = root[k].mul(start).sqrt();
+                quotient[k] = quotient[k].div(factor);
+                difference[k] = difference[k].sub(factor);
+                sum[k] = sum[k].add(factor);
             }
         }
-        for x in sets.into_iter().flatten() {
+        for x in [m, n, root, quotient, difference, sum].into_iter().flatten() {
             let mut end = starts;
             x.store(end.as_mut_ptr());
             black_box(end);

@@ -202,6 +202,12 @@ pub unsafe fn walk<A: Arithmetic, const N: usize>(
 ) {
     const { assert!(N.is_multiple_of(A::WIDTH)) };
     let mut group = 0;
+    // the compiler packs the baseline's scalars into short registers of its own
+    while A::WIDTH == 1 && group + 2 * IN_FLIGHT <= N {
+        // SAFETY: the loop condition keeps every scalar of the group below N
+        unsafe { walk_group::<A, N, { 2 * IN_FLIGHT }>(rows, x, rounds, group) };
+        group += 2 * IN_FLIGHT;
+    }
     while group + IN_FLIGHT * A::WIDTH <= N {
         // SAFETY: the loop condition keeps every register of the group below N; features by this function's contract
         unsafe { walk_group::<A, N, IN_FLIGHT>(rows, x, rounds, group) };
