@@ -24,6 +24,12 @@ pub static PLAN: &[(&str, &[(u32, u64)])] = &[
     ("cache.walk", &[(256, 64), (16, 64), (4096, 64)]),
     ("memory.march", &[(1024, 64), (32, 64), (4096, 64)]),
     ("memory.copy", &[(384, 64), (24, 64), (3072, 64)]),
+pub static PLAN: &[(&str, &[(u32, u64)])] = &[
+    ("integer.multiply", &[(9, 64)]),
+    ("float.chain32", &[(21, 64)]),
+    ("float.chain64", &[(21, 64)]),
+    ("float.convert", &[(18, 64)]),
+    ("float.powcast", &[(4, 64)]),
 ];
 
 macro_rules! embed {
@@ -38,6 +44,8 @@ pub static TABLES: &[(&str, &str)] =
     embed!["integer.multiply", "integer.divide", "integer.carry", "vector.shuffle", "vector.gather",];
 pub static TABLES: &[(&str, &str)] =
     embed!["integer.multiply", "cipher.aes", "cipher.sha256", "cache.walk", "memory.march", "memory.copy",];
+pub static TABLES: &[(&str, &str)] =
+    embed!["integer.multiply", "float.chain32", "float.chain64", "float.convert", "float.powcast",];
 
 /// SHA-256 of each table, in the format of `sha256sum`.
 pub static PINS: &str = include_str!("../tables/SHA256SUMS");

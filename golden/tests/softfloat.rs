@@ -1,8 +1,14 @@
 //! Softfloat against outside truths: `rustc_apfloat` (a port of LLVM's APFloat) for every operation that it has, in all
-//! four roundings and all formats; the `half` crate's software conversions exhaustively; this host's own square root;
-//! MPFR by `golden/witness/check_softfloat.py`, whose accepted answers lie in `golden/tests/data/`.
+//! four roundings and all formats; MPFR, whose answers lie in `data/softfloat.txt`; the `half` crate's software
+//! conversions exhaustively; this host's own square root; published values.
 
 #[path = "softfloat/apfloat.rs"]
 mod apfloat;
+#[path = "softfloat/host.rs"]
+mod host;
 #[path = "softfloat/inputs.rs"]
 mod inputs;
+#[path = "softfloat/mpfr.rs"]
+mod mpfr;
+#[path = "softfloat/published.rs"]
+mod published;

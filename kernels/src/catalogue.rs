@@ -18,6 +18,12 @@ pub static KERNELS: &[&dyn Kernel] = &[
     &crate::cache::walk::Walk,
     &crate::memory::march::March,
     &crate::memory::copy::Copy,
+pub static KERNELS: &[&dyn Kernel] = &[
+    &crate::integer::multiply::Multiply,
+    &crate::float::chain32::Chain32,
+    &crate::float::chain64::Chain64,
+    &crate::float::convert::Conversions,
+    &crate::float::powcast::PowCast,
 ];
 
 /// The kernel with this id.

@@ -7,6 +7,7 @@ pub mod catalogue;
 pub mod cipher;
 pub mod compare;
 pub mod fma;
+pub mod float;
 pub mod integer;
 pub mod isa;
 pub mod kernel;

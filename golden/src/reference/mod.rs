@@ -4,6 +4,7 @@
 pub mod cache;
 pub mod chacha;
 pub mod fma;
+pub mod float;
 pub mod integer;
 pub mod vector;
 pub mod cipher;
@@ -29,6 +30,10 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("cache.walk", cache::walk::words),
     ("memory.march", memory::march::words),
     ("memory.copy", memory::copy::words),
+    ("float.chain32", float::chain32::words),
+    ("float.chain64", float::chain64::words),
+    ("float.convert", float::convert::words),
+    ("float.powcast", float::powcast::words),
 ];
 
 /// The right output of `case`, computed now; `None` for an unknown kernel.

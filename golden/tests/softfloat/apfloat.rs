@@ -1,6 +1,6 @@
 //! Source of truth: crate `rustc_apfloat` 0.2.3 (LLVM's APFloat), results and exceptions.
 //!
-//! Two known differences in exceptions, both settled by MPFR by `golden/witness/check_softfloat.py`:
+//! Two known differences in exceptions, both settled by MPFR in `mpfr.rs`:
 //! - APFloat raises underflow for every inexact result that is subnormal or zero, and not for one that became the
 //!   smallest normal number; ours decides after rounding with unbounded exponent. They can differ only where the result
 //!   is ± the smallest normal number.

@@ -9,6 +9,11 @@ mod fma_chain32;
 mod fma_chain64;
 mod fma_common;
 mod integer_multiply;
+mod float_chain32;
+mod float_chain64;
+mod float_common;
+mod float_convert;
+mod float_powcast;
 
 /// The bare loop beside one variant of one kernel.
 pub struct Yardstick {
@@ -82,6 +87,11 @@ pub fn all() -> Vec<Yardstick> {
         cache_walk::yardsticks(),
         memory_march::yardsticks(),
         memory_copy::yardsticks(),
+    [
+        float_chain32::yardsticks(),
+        float_chain64::yardsticks(),
+        float_convert::yardsticks(),
+        float_powcast::yardsticks(),
     ]
     .into_iter()
     .flatten()

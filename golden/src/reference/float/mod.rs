@@ -1,0 +1,7 @@
+//! Floating-point units, on softfloat.
+
+pub mod chain32;
+pub mod chain64;
+mod common_chain;
+pub mod convert;
+pub mod powcast;

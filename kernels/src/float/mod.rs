@@ -1,0 +1,10 @@
+//! Floating-point units without fused multiply-add: chains of the five operations, conversions, scalar powers.
+
+pub mod chain32;
+pub mod chain64;
+mod common_boundary;
+mod common_chain;
+#[cfg(test)]
+mod common_persistence;
+pub mod convert;
+pub mod powcast;
