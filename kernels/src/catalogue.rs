@@ -3,27 +3,23 @@
 use crate::kernel::Kernel;
 
 /// Every kernel, by family and then name.
-pub static KERNELS: &[&dyn Kernel] =
-    &[&crate::integer::multiply::Multiply, &crate::fma::chain32::Chain32, &crate::fma::chain64::Chain64];
 pub static KERNELS: &[&dyn Kernel] = &[
     &crate::integer::multiply::Multiply,
     &crate::integer::divide::Divide,
     &crate::integer::carry::Carry,
+    &crate::float::chain32::Chain32,
+    &crate::float::chain64::Chain64,
+    &crate::float::convert::Conversions,
+    &crate::float::powcast::PowCast,
+    &crate::fma::chain32::Chain32,
+    &crate::fma::chain64::Chain64,
     &crate::vector::shuffle::Shuffle,
     &crate::vector::gather::Gather,
-pub static KERNELS: &[&dyn Kernel] = &[
-    &crate::integer::multiply::Multiply,
     &crate::cipher::aes::Aes,
     &crate::cipher::sha256::Sha256,
     &crate::cache::walk::Walk,
     &crate::memory::march::March,
     &crate::memory::copy::Copy,
-pub static KERNELS: &[&dyn Kernel] = &[
-    &crate::integer::multiply::Multiply,
-    &crate::float::chain32::Chain32,
-    &crate::float::chain64::Chain64,
-    &crate::float::convert::Conversions,
-    &crate::float::powcast::PowCast,
 ];
 
 /// The kernel with this id.

@@ -1,13 +1,13 @@
 //! What a core is made to do: deterministic computations without IO, clock or threads, knowing no golden value.
 
-mod blocks;
 pub mod aligned;
+mod blocks;
 pub mod cache;
 pub mod catalogue;
 pub mod cipher;
 pub mod compare;
-pub mod fma;
 pub mod float;
+pub mod fma;
 pub mod integer;
 pub mod isa;
 pub mod kernel;

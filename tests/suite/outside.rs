@@ -61,7 +61,11 @@ fn flip(pid: Pid, target: Target, rng: &mut ChaCha12Rng) -> nix::Result<()> {
         }
         Target::Heap => {
             let maps = std::fs::read_to_string(format!("/proc/{pid}/maps")).unwrap_or_default();
-            let heap = maps.lines().find(|l| l.ends_with("[heap]")).and_then(|l| l.split(' ').next()).and_then(|r| r.split_once('-'));
+            let heap = maps
+                .lines()
+                .find(|l| l.ends_with("[heap]"))
+                .and_then(|l| l.split(' ').next())
+                .and_then(|r| r.split_once('-'));
             let Some((low, high)) = heap else { return Err(nix::errno::Errno::ENOENT) };
             let parse = |t| u64::from_str_radix(t, 16).unwrap();
             let (low, high) = (parse(low), parse(high));
@@ -104,7 +108,11 @@ fn campaign(target: Target, flips: u64, seed: u64) -> (u64, u64) {
     let report = json(&output);
     for core in report["cores"].as_array().unwrap() {
         if core["cpu"] != cpu {
-            assert_eq!((&core["verdict"], &core["mismatches"]), (&Value::from("clear"), &Value::from(0)), "{target:?}: {report:#}");
+            assert_eq!(
+                (&core["verdict"], &core["mismatches"]),
+                (&Value::from("clear"), &Value::from(0)),
+                "{target:?}: {report:#}"
+            );
         }
     }
     for list in ["findings", "lost"] {
@@ -120,7 +128,12 @@ fn campaign(target: Target, flips: u64, seed: u64) -> (u64, u64) {
     }
     // a hang is noticed when its deadline has passed: at most one slice and the grace later
     let noticed = times.iter().filter(|t| sightings.iter().any(|s| (**t..**t + 4200).contains(s))).count() as u64;
-    println!("{target:?}: {} flips, {noticed} noticed, {} sightings, all on cpu {cpu}, verdict {}", times.len(), sightings.len(), report["verdict"]);
+    println!(
+        "{target:?}: {} flips, {noticed} noticed, {} sightings, all on cpu {cpu}, verdict {}",
+        times.len(),
+        sightings.len(),
+        report["verdict"]
+    );
     (times.len() as u64, noticed)
 }
 

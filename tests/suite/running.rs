@@ -47,8 +47,9 @@ pub fn run(args: &[&str]) -> Output {
 }
 
 pub fn json(output: &Output) -> Value {
-    serde_json::from_slice(&output.stdout)
-        .unwrap_or_else(|e| panic!("{e}: {}{}", String::from_utf8_lossy(&output.stdout), String::from_utf8_lossy(&output.stderr)))
+    serde_json::from_slice(&output.stdout).unwrap_or_else(|e| {
+        panic!("{e}: {}{}", String::from_utf8_lossy(&output.stdout), String::from_utf8_lossy(&output.stderr))
+    })
 }
 
 /// Cpus of the machine; tests that need two say so and pass on one.
@@ -82,7 +83,8 @@ pub fn worker(parent: &Child, cpu: u32) -> Pid {
 
 fn window(scratch: &Scratch, budget: &str, more: &[&str]) -> Child {
     let ledger = scratch.ledger();
-    let mut args = vec!["window", "--budget", budget, "--format", "json", "--ledger", &ledger, "--kernels", "integer.*"];
+    let mut args =
+        vec!["window", "--budget", budget, "--format", "json", "--ledger", &ledger, "--kernels", "integer.*"];
     args.extend(more);
     program(&args).spawn().unwrap()
 }
@@ -106,7 +108,10 @@ fn a_window_ends_on_its_budget_and_covers_every_unit_on_every_cpu() {
         for kernel in kernels::catalogue::KERNELS {
             for (variant, proof) in kernels::isa::survey(*kernel) {
                 let ran = report["kernels"].as_array().unwrap().iter().any(|k| {
-                    k["kernel"] == kernel.id() && k["variant"] == variant.name() && k["cpu"] == *cpu && k["runs"].as_u64() > Some(0)
+                    k["kernel"] == kernel.id()
+                        && k["variant"] == variant.name()
+                        && k["cpu"] == *cpu
+                        && k["runs"].as_u64() > Some(0)
                 });
                 assert_eq!(ran, proof.is_ok(), "{} {variant} on cpu {cpu}", kernel.id());
             }
@@ -123,7 +128,8 @@ fn a_window_ends_on_its_budget_and_covers_every_unit_on_every_cpu() {
     let verified = run(&["ledger", "verify", "--ledger", &ledger, "--format", "json"]);
     assert_eq!((verified.status.code(), &json(&verified)["condition"]["state"]), (Some(0), &Value::from("clean")));
     let shown = json(&run(&["ledger", "show", "--ledger", &ledger, "--format", "json"]));
-    let sum = |v: &Value, key: &str| v[key].as_array().unwrap().iter().map(|c| c["runs"].as_u64().unwrap()).sum::<u64>();
+    let sum =
+        |v: &Value, key: &str| v[key].as_array().unwrap().iter().map(|c| c["runs"].as_u64().unwrap()).sum::<u64>();
     assert_eq!(sum(&shown, "cells"), sum(&report, "kernels"), "the ledger holds every run that the window reported");
 }
 

@@ -3,13 +3,12 @@
 
 pub mod cache;
 pub mod chacha;
-pub mod fma;
-pub mod float;
-pub mod integer;
-pub mod vector;
 pub mod cipher;
+pub mod float;
+pub mod fma;
 pub mod integer;
 pub mod memory;
+pub mod vector;
 
 use kernels::Case;
 
@@ -19,10 +18,14 @@ pub type Reference = fn(&Case) -> Vec<u64>;
 /// Every reference by kernel id.
 pub static REFERENCES: &[(&str, Reference)] = &[
     ("integer.multiply", integer::multiply::words),
-    ("fma.chain32", fma::chain32::words),
-    ("fma.chain64", fma::chain64::words),
     ("integer.divide", integer::divide::words),
     ("integer.carry", integer::carry::words),
+    ("float.chain32", float::chain32::words),
+    ("float.chain64", float::chain64::words),
+    ("float.convert", float::convert::words),
+    ("float.powcast", float::powcast::words),
+    ("fma.chain32", fma::chain32::words),
+    ("fma.chain64", fma::chain64::words),
     ("vector.shuffle", vector::shuffle::words),
     ("vector.gather", vector::gather::words),
     ("cipher.aes", cipher::aes::words),
@@ -30,10 +33,6 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("cache.walk", cache::walk::words),
     ("memory.march", memory::march::words),
     ("memory.copy", memory::copy::words),
-    ("float.chain32", float::chain32::words),
-    ("float.chain64", float::chain64::words),
-    ("float.convert", float::convert::words),
-    ("float.powcast", float::powcast::words),
 ];
 
 /// The right output of `case`, computed now; `None` for an unknown kernel.

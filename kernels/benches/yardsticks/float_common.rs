@@ -29,7 +29,8 @@ pub unsafe fn mix<A: Arithmetic, const K: usize>(near_one: A::Scalar, middle: A:
             next
         };
         let mut set = || -> [A; K] { std::array::from_fn(|_| fresh()) };
-        let (mut m, mut n, mut root, mut quotient, mut difference, mut sum) = (set(), set(), set(), set(), set(), set());
+        let (mut m, mut n, mut root, mut quotient, mut difference, mut sum) =
+            (set(), set(), set(), set(), set(), set());
         for _ in 0..ROUNDS {
             for k in 0..K {
                 m[k] = m[k].mul(factor);

@@ -55,14 +55,9 @@ fn fused() {
 
 /// See the file's head.
 pub fn yardsticks() -> Vec<Yardstick> {
-    [
-        (Variant::Portable, split as fn()),
-        (Variant::Avx2, fused),
-        (Variant::Avx512, fused),
-        (Variant::Neon, fused),
-    ]
-    .into_iter()
-    .filter(|(variant, _)| available(KERNEL, *variant))
-    .map(|(variant, run)| Yardstick { kernel: KERNEL, variant, units: POWERS, run: Box::new(run) })
-    .collect()
+    [(Variant::Portable, split as fn()), (Variant::Avx2, fused), (Variant::Avx512, fused), (Variant::Neon, fused)]
+        .into_iter()
+        .filter(|(variant, _)| available(KERNEL, *variant))
+        .map(|(variant, run)| Yardstick { kernel: KERNEL, variant, units: POWERS, run: Box::new(run) })
+        .collect()
 }

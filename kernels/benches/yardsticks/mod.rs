@@ -5,15 +5,24 @@
 
 use kernels::{Variant, catalogue, isa};
 
-mod fma_chain32;
-mod fma_chain64;
-mod fma_common;
-mod integer_multiply;
+mod cache_walk;
+mod cipher_aes;
+mod cipher_sha256;
 mod float_chain32;
 mod float_chain64;
 mod float_common;
 mod float_convert;
 mod float_powcast;
+mod fma_chain32;
+mod fma_chain64;
+mod fma_common;
+mod integer_carry;
+mod integer_divide;
+mod integer_multiply;
+mod memory_copy;
+mod memory_march;
+mod vector_gather;
+mod vector_shuffle;
 
 /// The bare loop beside one variant of one kernel.
 pub struct Yardstick {
@@ -22,38 +31,6 @@ pub struct Yardstick {
     /// The variant whose instructions it uses.
     pub variant: Variant,
     /// Units of the kernel's `work` in one call.
-//! What a kernel's throughput is held against: the bare loop of the same instruction, as fast as the core issues it.
-
-use kernels::Variant;
-
-mod integer_carry;
-mod integer_divide;
-mod integer_multiply;
-mod vector_gather;
-mod vector_shuffle;
-
-/// The bare loop for one kernel and variant.
-pub struct Yardstick {
-    /// Catalogue id.
-    pub kernel: &'static str,
-    /// The variant whose instruction it uses.
-//! Bare loops of the instructions that the kernels lean on, at their peak throughput: what a kernel's rate is held against.
-
-mod cache_walk;
-mod cipher_aes;
-mod cipher_sha256;
-mod memory_copy;
-mod memory_march;
-
-use kernels::Variant;
-
-/// A loop that does nothing but the kernel's characteristic work.
-pub struct Yardstick {
-    /// Catalogue id of the kernel.
-    pub kernel: &'static str,
-    /// Instruction-set level of the loop.
-    pub variant: Variant,
-    /// Units of [`kernels::Kernel::work`] per call.
     pub units: u64,
     /// One call.
     pub run: Box<dyn FnMut()>,
@@ -66,32 +43,23 @@ pub fn available(kernel: &str, variant: Variant) -> bool {
 
 /// Every yardstick that can run here.
 pub fn all() -> Vec<Yardstick> {
-    [integer_multiply::yardsticks(), fma_chain32::yardsticks(), fma_chain64::yardsticks()]
-/// Every yardstick that this CPU can run.
-pub fn all() -> Vec<Yardstick> {
     [
         integer_multiply::yardsticks(),
         integer_divide::yardsticks(),
         integer_carry::yardsticks(),
+        float_chain32::yardsticks(),
+        float_chain64::yardsticks(),
+        float_convert::yardsticks(),
+        float_powcast::yardsticks(),
+        fma_chain32::yardsticks(),
+        fma_chain64::yardsticks(),
         vector_shuffle::yardsticks(),
         vector_gather::yardsticks(),
-    ]
-        .into_iter()
-        .flatten()
-        .collect()
-/// Every yardstick that this CPU can run.
-pub fn all() -> Vec<Yardstick> {
-    [
         cipher_aes::yardsticks(),
         cipher_sha256::yardsticks(),
         cache_walk::yardsticks(),
         memory_march::yardsticks(),
         memory_copy::yardsticks(),
-    [
-        float_chain32::yardsticks(),
-        float_chain64::yardsticks(),
-        float_convert::yardsticks(),
-        float_powcast::yardsticks(),
     ]
     .into_iter()
     .flatten()

@@ -1,8 +1,3 @@
-//! One generic body over a lane trait: each kernel's algorithm is written once, a variant only walks it in other widths.
-
-pub mod fma;
-pub mod fma32;
-pub mod fma64;
 //! Vector registers behind traits, so that an algorithm is written once and walked in any width.
 //!
 //! Every method is `#[inline(always)]` and `unsafe`: the caller is a wrapper with `#[target_feature]`, reached only
@@ -12,6 +7,9 @@ pub mod arithmetic;
 pub mod convert;
 mod f32;
 mod f64;
+pub mod fma;
+pub mod fma32;
+pub mod fma64;
 
 pub use arithmetic::Arithmetic;
 pub use convert::Convert;
