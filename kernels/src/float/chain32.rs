@@ -67,7 +67,8 @@ impl Kernel for Chain32 {
         #[cfg(target_arch = "aarch64")]
         {
             use crate::isa::Feature;
-            const MARKS: &[&str] = &["fmul", "fsqrt", "fdiv", "fsub", "fadd"];
+            // fabd: the compiler joins the subtraction and the cleared sign
+            const MARKS: &[&str] = &["fmul", "fsqrt", "fdiv", "fabd", "fadd"];
             &[
                 Build { variant: Variant::Portable, needs: &[], marks: MARKS, proven: Proven::Emulator },
                 Build { variant: Variant::Neon, needs: &[Feature::Neon], marks: MARKS, proven: Proven::Emulator },

@@ -8,8 +8,8 @@
 //!
 //! that is x ← a + |c − (x·u)^1.5 / v| · w. With |u| in [15/16, 1), v in [1/2, 17/32), c in [41/32, 42/32),
 //! w in [5/8, 21/32), a in [1/2, 33/64) it maps the binade [1/2, 1) into itself, folding it once and stretching it
-//! everywhere by 1.1 to 2: a difference is not damped and not rounded away, but has spread over the whole significand
-//! at the end. n is used beside its root because a root alone maps two binades on one; x stays in one binade so that the
+//! everywhere by 1.1 to 2: a difference that outlives its own step's rounding is not damped, but has spread over the
+//! whole significand at the end. n is used beside its root because a root alone maps two binades on one; x stays in one binade so that the
 //! last place means the same in every step. `common_persistence.rs` measures how many single errors the output shows.
 //! Signs are drawn too, but in pairs (state and u; v and c; w and a), so that n > 0 and the fold is the only place where
 //! a sign is dropped. Nothing overflows, v is never zero, so nothing is NaN.

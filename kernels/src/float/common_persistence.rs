@@ -13,6 +13,8 @@ use crate::operands::Operands;
 thread_local! {
     /// Operations until the disturbance, and its XOR mask or, if 0, one unit in the last place.
     static FAULT: Cell<(u64, u64)> = const { Cell::new((u64::MAX, 0)) };
+    /// Results so far that were subnormal, and that were zero, infinite or NaN.
+    static TALLY: Cell<(u64, u64)> = const { Cell::new((0, 0)) };
 }
 
 /// A scalar whose n-th result is wrong.
@@ -23,6 +25,11 @@ macro_rules! faulty {
     ($scalar:ident $bits:ident) => {
         impl Faulty<$scalar> {
             fn disturbed(x: $scalar) -> Self {
+                let (subnormal, odd) = TALLY.get();
+                TALLY.set((
+                    subnormal + u64::from(x.is_subnormal()),
+                    odd + u64::from(!x.is_normal() && !x.is_subnormal()),
+                ));
                 let (left, mask) = FAULT.get();
                 FAULT.set((left.wrapping_sub(1), mask));
                 if left != 0 {
@@ -148,4 +155,39 @@ fn single_bounded() {
 #[test]
 fn single_full_range() {
     hold(SINGLE, true, 8, single, [94.0, 99.0, 35.0]);
+}
+
+/// Subnormal results and results that are zero, infinite or NaN among those of 500 cases.
+fn tally<S>(shape: Shape, full: bool, scalar: fn(u64) -> S) -> (u64, u64)
+where
+    S: Copy,
+    Faulty<S>: Arithmetic<Scalar = S>,
+{
+    FAULT.set((u64::MAX, 0));
+    TALLY.set((0, 0));
+    for seed in 0..500 {
+        let mut operands = Operands::new(&Case { kernel: "float.tally", seed: Seed(seed), size: Size(1) });
+        let chains: Chains<S, CHAINS> = Chains::draw(shape, full, &mut operands, scalar);
+        let mut x = *chains.start;
+        // SAFETY: a scalar needs no feature
+        unsafe { walk::<Faulty<S>, CHAINS>(&chains.rows, &mut x, 2) };
+    }
+    TALLY.get()
+}
+
+/// Our own requirement: bounded cases have normal results only (a difference may be zero), full-range ones also
+/// subnormal results, in one of 500 at least, and no case a NaN or infinity.
+#[test]
+fn results_are_of_the_stated_kinds() {
+    const RESULTS: u64 = 500 * 2 * 8 * 7 * CHAINS as u64;
+    for (what, full, (subnormal, odd)) in [
+        ("double", false, tally(DOUBLE, false, f64::from_bits)),
+        ("double", true, tally(DOUBLE, true, f64::from_bits)),
+        ("single", false, tally(SINGLE, false, single)),
+        ("single", true, tally(SINGLE, true, single)),
+    ] {
+        // d = c − q cancels exactly now and then: d = 0, and then t = 0
+        assert!(odd <= RESULTS / 10_000, "{what}, full range {full}: {odd} results are zero, infinite or NaN");
+        assert_eq!(subnormal >= RESULTS / 500, full, "{what}, full range {full}: {subnormal} subnormal results");
+    }
 }

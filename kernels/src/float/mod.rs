@@ -4,6 +4,7 @@ pub mod chain32;
 pub mod chain64;
 mod common_boundary;
 mod common_chain;
+mod common_pair;
 #[cfg(test)]
 mod common_persistence;
 pub mod convert;

@@ -27,6 +27,7 @@
 //! in every round, f ← (f rotated left by 7) + word mod 2^64; the 8 last states.
 
 use super::common_chain::{Chains, DOUBLE, Operand, ROWS, walk, words_drawn};
+use super::common_pair::{Fused, ProductError, Split, pow};
 use crate::isa::Proof;
 use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
 use crate::lanes::Arithmetic;
@@ -122,7 +123,7 @@ impl Kernel for PowCast {
             powers.push(power(w, operands.word()));
         }
         operands.finish(words_drawn(CHAINS) + 2 * (POWERS - PUBLISHED.len()));
-        let run = match proof.variant_for(self.id()) {
+        let run: Run = match proof.variant_for(self.id()) {
             #[cfg(target_arch = "x86_64")]
             Variant::Avx2 => run_avx2,
             #[cfg(target_arch = "x86_64")]
@@ -136,7 +137,7 @@ impl Kernel for PowCast {
 }
 
 /// x and 16y from two words.
-fn power(w: u64, z: u64) -> (f64, i32) {
+fn power(w: u64, z: u64) -> Power {
     let fraction = z & ((1 << 52) - 1);
     let (bits, bound) = match w >> 60 & 3 {
         0 | 1 => (0x3ff << 52 | fraction >> 3, 4096),
@@ -149,11 +150,15 @@ fn power(w: u64, z: u64) -> (f64, i32) {
 
 type Rows = [Operand<f64, CHAINS>];
 type States = [f64; CHAINS];
+/// x and 16y.
+type Power = (f64, i32);
+
+type Run = fn(&Rows, &mut States, &[Power], &mut [u64]);
 
 struct Prepared {
     chains: Chains<f64, CHAINS>,
-    powers: Vec<(f64, i32)>,
-    run: fn(&Rows, &mut States, &[(f64, i32)], &mut [u64]),
+    powers: Vec<Power>,
+    run: Run,
 }
 
 impl Ready for Prepared {
@@ -166,93 +171,6 @@ impl Ready for Prepared {
     }
 }
 
-/// hi + lo.
-type Pair = (f64, f64);
-
-#[inline(always)]
-fn fast_sum(a: f64, b: f64) -> Pair {
-    let s = a + b;
-    (s, b - (s - a))
-}
-
-/// How a level gets the exact error of a product.
-trait ProductError {
-    /// a·b − p, where p is the rounded product.
-    fn error(a: f64, b: f64, p: f64) -> f64;
-}
-
-/// Dekker's: each factor is split into halves whose products are exact.
-struct Split;
-impl ProductError for Split {
-    #[inline(always)]
-    fn error(a: f64, b: f64, p: f64) -> f64 {
-        let halves = |x: f64| {
-            let c = 134_217_729.0 * x;
-            let high = c - (c - x);
-            (high, x - high)
-        };
-        let ((ah, al), (bh, bl)) = (halves(a), halves(b));
-        ((ah * bh - p) + ah * bl + al * bh) + al * bl
-    }
-}
-
-/// One instruction; only used where the level has it, a library call elsewhere.
-struct Fused;
-impl ProductError for Fused {
-    #[inline(always)]
-    fn error(a: f64, b: f64, p: f64) -> f64 {
-        a.mul_add(b, -p)
-    }
-}
-
-#[inline(always)]
-fn product<E: ProductError>(a: Pair, b: Pair) -> Pair {
-    let p = a.0 * b.0;
-    fast_sum(p, E::error(a.0, b.0, p) + (a.0 * b.1 + a.1 * b.0))
-}
-
-#[inline(always)]
-fn root<E: ProductError>(a: Pair) -> Pair {
-    let q = a.0.sqrt();
-    let p = q * q;
-    fast_sum(q, (((a.0 - p) - E::error(q, q, p)) + a.1) / (q + q))
-}
-
-#[inline(always)]
-fn reciprocal<E: ProductError>(a: Pair) -> Pair {
-    let q = 1.0 / a.0;
-    let p = q * a.0;
-    fast_sum(q, (((1.0 - p) - E::error(q, a.0, p)) - q * a.1) / a.0)
-}
-
-#[inline(always)]
-fn pow<E: ProductError>(x: f64, sixteenths: i32) -> f64 {
-    let n = sixteenths.unsigned_abs();
-    let mut r = (1.0, 0.0);
-    let mut b = (x, 0.0);
-    let mut whole = n >> 4;
-    while whole != 0 {
-        if whole & 1 == 1 {
-            r = product::<E>(r, b);
-        }
-        whole >>= 1;
-        if whole != 0 {
-            b = product::<E>(b, b);
-        }
-    }
-    b = (x, 0.0);
-    for bit in (0..4).rev() {
-        b = root::<E>(b);
-        if n >> bit & 1 == 1 {
-            r = product::<E>(r, b);
-        }
-    }
-    if sixteenths < 0 {
-        r = reciprocal::<E>(r);
-    }
-    r.0
-}
-
 /// All powers, a row of the chains before each.
 ///
 /// # Safety
@@ -261,7 +179,7 @@ fn pow<E: ProductError>(x: f64, sixteenths: i32) -> f64 {
 unsafe fn body<A: Arithmetic<Scalar = f64>, E: ProductError>(
     rows: &Rows,
     x: &mut States,
-    powers: &[(f64, i32)],
+    powers: &[Power],
     out: &mut [u64],
 ) {
     let (results, folds) = out.split_at_mut(2 * POWERS);
@@ -283,7 +201,7 @@ unsafe fn body<A: Arithmetic<Scalar = f64>, E: ProductError>(
 }
 
 #[inline(never)]
-fn portable(rows: &Rows, x: &mut States, powers: &[(f64, i32)], out: &mut [u64]) {
+fn portable(rows: &Rows, x: &mut States, powers: &[Power], out: &mut [u64]) {
     // SAFETY: a scalar needs no feature
     unsafe { body::<f64, Split>(rows, x, powers, out) }
 }
@@ -291,7 +209,7 @@ fn portable(rows: &Rows, x: &mut States, powers: &[(f64, i32)], out: &mut [u64])
 #[cfg(target_arch = "x86_64")]
 #[inline(never)]
 #[target_feature(enable = "avx2,fma")]
-fn avx2(rows: &Rows, x: &mut States, powers: &[(f64, i32)], out: &mut [u64]) {
+fn avx2(rows: &Rows, x: &mut States, powers: &[Power], out: &mut [u64]) {
     // SAFETY: avx2 is enabled on this function
     unsafe { body::<std::arch::x86_64::__m256d, Fused>(rows, x, powers, out) }
 }
@@ -299,26 +217,26 @@ fn avx2(rows: &Rows, x: &mut States, powers: &[(f64, i32)], out: &mut [u64]) {
 #[cfg(target_arch = "x86_64")]
 #[inline(never)]
 #[target_feature(enable = "avx512f,fma")]
-fn avx512(rows: &Rows, x: &mut States, powers: &[(f64, i32)], out: &mut [u64]) {
+fn avx512(rows: &Rows, x: &mut States, powers: &[Power], out: &mut [u64]) {
     // SAFETY: avx512f is enabled on this function
     unsafe { body::<std::arch::x86_64::__m512d, Fused>(rows, x, powers, out) }
 }
 
 #[cfg(target_arch = "aarch64")]
 #[inline(never)]
-fn neon(rows: &Rows, x: &mut States, powers: &[(f64, i32)], out: &mut [u64]) {
+fn neon(rows: &Rows, x: &mut States, powers: &[Power], out: &mut [u64]) {
     // SAFETY: NEON is aarch64's baseline
     unsafe { body::<std::arch::aarch64::float64x2_t, Fused>(rows, x, powers, out) }
 }
 
 #[cfg(target_arch = "x86_64")]
-fn run_avx2(rows: &Rows, x: &mut States, powers: &[(f64, i32)], out: &mut [u64]) {
+fn run_avx2(rows: &Rows, x: &mut States, powers: &[Power], out: &mut [u64]) {
     // SAFETY: chosen only in `prepare`, for a `Proof` of `Avx2`, which `isa` makes only when avx2 and fma are present
     unsafe { avx2(rows, x, powers, out) }
 }
 
 #[cfg(target_arch = "x86_64")]
-fn run_avx512(rows: &Rows, x: &mut States, powers: &[(f64, i32)], out: &mut [u64]) {
+fn run_avx512(rows: &Rows, x: &mut States, powers: &[Power], out: &mut [u64]) {
     // SAFETY: chosen only in `prepare`, for a `Proof` of `Avx512`, which `isa` makes only when its features are present
     unsafe { avx512(rows, x, powers, out) }
 }
