@@ -26,6 +26,7 @@ from statsmodels.stats.multitest import multipletests
 
 warnings.filterwarnings("ignore")
 mp.mp.dps = 50
+NODES = [(mp.mpf(float(x)), float(w)) for x, w in zip(*np.polynomial.legendre.leggauss(16))]
 TINY = 1e-290  # p-values below this are compared as zero
 rng = random.Random()
 
@@ -287,10 +288,11 @@ def mp_tail_integral(ln_density, edge, direction, spread, distance):
     mean in such units. The logarithm of the density is taken as it stands: high precision affords the cancellation."""
     reach = (mp.sqrt(distance**2 + 110) - distance) * spread * mp.mpf("1.5")
     panels = int(reach * (1 + distance) / spread) + 1
-    cuts = [edge + direction * reach * j / panels for j in range(panels + 1)]
-    peak = ln_density(edge)
-    parts = (mp.quad(lambda s: mp.exp(ln_density(s) - peak), cuts[j : j + 2], method="gauss-legendre", maxdegree=4) for j in range(panels))
-    return abs(mp.fsum(parts)) * mp.exp(peak)
+    half, peak, total = direction * reach / panels / 2, ln_density(edge), mp.mpf(0)
+    for panel in range(panels):
+        middle = edge + (2 * panel + 1) * half
+        total += sum(w * mp.exp(ln_density(middle + half * x) - peak) for x, w in NODES)
+    return abs(half * total) * mp.exp(peak)
 
 
 def mp_binomial(x, n, p, side):
@@ -317,7 +319,8 @@ def mp_poisson(x, mean, side):
         point = mp.exp(x * mp.log(mean) - mean - mp.loggamma(x + 1))
         return mp_sum(point, (lambda j: (x - j) / mean) if side == "below" else (lambda j: mean / (x + 1 + j)))
     k = x if side == "above" else x + 1
-    ln_density = lambda s: (k - 1) * mp.log(s) - s - mp.loggamma(k)
+    ln_gamma = mp.loggamma(k)
+    ln_density = lambda s: (k - 1) * mp.log(s) - s - ln_gamma
     return mp_tail_integral(ln_density, mean, -1 if side == "above" else 1, mp.sqrt(k), abs(k - mean) / mp.sqrt(k))
 
 
