@@ -298,6 +298,8 @@ def mp_tail_integral(ln_density, edge, direction, spread, distance):
 def mp_binomial(x, n, p, side):
     """P(X <= x) or P(X >= x), from x away from the mean: by adding, or as the integral of the beta density."""
     p = mp.mpf(p)
+    if x < 0 or x > n:
+        return mp.mpf(0)  # asked only as the complement of everything
     if (side == "below") != (x <= n * p):
         return 1 - (mp_binomial(x + 1, n, p, "above") if side == "below" else mp_binomial(x - 1, n, p, "below"))
     odds, variance = p / (1 - p), n * p * (1 - p)
@@ -313,6 +315,8 @@ def mp_binomial(x, n, p, side):
 
 def mp_poisson(x, mean, side):
     mean = mp.mpf(mean)
+    if x < 0:
+        return mp.mpf(0)
     if (side == "below") != (x <= mean):
         return 1 - (mp_poisson(x + 1, mean, "above") if side == "below" else mp_poisson(x - 1, mean, "below"))
     if x < 10**5:
