@@ -24,7 +24,7 @@ pub struct FisherTest {
 /// # Errors
 /// A table of zeros.
 ///
-/// The work grows with the standard deviation of the first cell: below 0.1 s with 10^12 in every cell.
+/// The work grows with the standard deviation of the first cell: under a second with 10^12 in every cell.
 pub fn fisher_exact(table: [[u64; 2]; 2]) -> Result<FisherTest, StatsError> {
     let law = Margins::of(table)?.law(0.0);
     let a = table[0][0] as f64;

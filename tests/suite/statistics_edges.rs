@@ -1,6 +1,6 @@
 //! Where statistics usually break: the far ends of the counts, answers that are infinite, inputs that make no sense.
 
-use proofhouse::stats::{self, Interval, Observed, StatsError};
+use proofhouse::stats::{self, GammaPrior, Interval, Observed, SequentialPlan, StatsError};
 
 const TRILLION: u64 = 1_000_000_000_000;
 
@@ -98,6 +98,56 @@ fn episodes_split_where_it_was_quiet_for_the_gap() {
     assert_eq!(starts, [0.0, 130.0, 190.0]);
     assert_eq!(found.iter().map(|episode| episode.mismatches).collect::<Vec<_>>(), [2, 1, 2]);
     assert!(stats::episodes(&[], 60.0).unwrap().is_empty());
+}
+
+/// A plan that only counts is the Poisson law itself; no plan loses probability on the way.
+#[test]
+fn plans_account_for_every_outcome() {
+    // P(X < 1) = exp(−3), mean exposure (1 − exp(−3)) / 1: reject at the first event, accept at 3
+    let point = SequentialPlan::fixed(3.0, 1).unwrap().at_rate(1.0).unwrap();
+    close(point.accept, (-3.0_f64).exp(), 1e-14);
+    close(point.expected_exposure, -(-3.0_f64).exp_m1(), 1e-14);
+    let plan = SequentialPlan::wald(0.001, 0.004, 0.05, 0.1, 12).unwrap();
+    for rate in [1e-5, 0.001, 0.002, 0.004, 0.1] {
+        let point = plan.at_rate(rate).unwrap();
+        close(point.accept + point.reject, 1.0, 1e-12);
+        assert!(point.expected_exposure <= plan.accept_at[11], "{point:?}");
+    }
+    // Wald's inequality bounds the sum of the risks of the plan without truncation; late truncation changes little
+    let (alpha, beta) = (plan.at_rate(0.001).unwrap().reject, plan.at_rate(0.004).unwrap().accept);
+    assert!(alpha + beta < 0.15 && alpha > 0.01 && beta > 0.01, "{alpha} {beta}");
+    let mut broken = plan.clone();
+    broken.reject_at.pop();
+    assert!(broken.at_rate(0.001).is_err());
+    broken = plan;
+    broken.accept_at.swap(0, 11);
+    assert!(broken.at_rate(0.001).is_err());
+}
+
+#[test]
+fn power_and_detection_agree_with_their_closed_forms() {
+    close(stats::detection_probability(0.01, 100.0).unwrap(), -(-1.0_f64).exp_m1(), 1e-15);
+    close(stats::exposure_to_detect(0.01, 0.95).unwrap(), 299.573_227_355_399_1, 1e-14);
+    // two equal rates: the conditional test keeps its level, and a doubled sample has more power
+    let idle = stats::comparison_power((20.0, 1.0), (20.0, 1.0), 0.05).unwrap();
+    assert!(idle > 0.01 && idle <= 0.05, "{idle}");
+    let short = stats::comparison_power((20.0, 1.0), (10.0, 1.0), 0.05).unwrap();
+    let long = stats::comparison_power((40.0, 2.0), (20.0, 2.0), 0.05).unwrap();
+    assert!(0.4 < short && short < long && long < 1.0, "{short} {long}");
+}
+
+#[test]
+fn shrinkage_and_clusters_know_their_limits() {
+    assert_eq!(GammaPrior::fit(&[5, 5, 5, 5], &[1.0; 4]), Err(StatsError::OneRate));
+    let prior = GammaPrior::fit(&[0, 0, 0, 40, 1], &[1.0; 5]).unwrap();
+    let quiet = prior.posterior(0, 1.0, 0.95).unwrap();
+    assert!(quiet.lower < quiet.estimate && quiet.estimate < quiet.upper && quiet.estimate < 1.0, "{quiet:?}");
+    // scatter as of chance leaves Garwood's interval, clumps widen it
+    let even = stats::clustered_rate(&[(5, 1.0), (5, 1.0), (5, 1.0)], 0.95).unwrap();
+    let exact = stats::garwood(15, 3.0, 0.95).unwrap();
+    close(even.upper, exact.upper, 1e-14);
+    let clumped = stats::clustered_rate(&[(15, 1.0), (0, 1.0), (0, 1.0)], 0.95).unwrap();
+    assert!(clumped.upper > 2.0 * exact.upper && clumped.lower < 0.5 * exact.lower, "{clumped:?}");
 }
 
 #[test]

@@ -1,9 +1,10 @@
 //! The few numerical tools under the laws of counting.
 //!
-//! Why not a library's incomplete beta and gamma: those in reach take the difference of log-gammas, which at
-//! 10^12 runs is wrong in the third digit of the answer, and cap their continued fractions. Here a point
-//! probability comes from its deviance (no cancellation at any size), and a tail from the point probability by
-//! adding positive terms, or by integrating a smooth concave exponential where the terms would be too many.
+//! Why not a library's incomplete beta and gamma: those in reach take the difference of log-gammas and cap their
+//! continued fractions, which costs all but nine digits at 10^6 runs and all but three at 10^12 (statrs 0.19 measured
+//! against SciPy). Here a point probability comes from its deviance (no cancellation at any size), and a tail from the
+//! point probability by adding positive terms, or by integrating a smooth concave exponential where the terms would be
+//! too many.
 
 mod deviance;
 mod quadrature;
