@@ -452,7 +452,8 @@ def gamma_input():
     shape, mean = 10 ** rng.uniform(-0.7, 0.5), 10 ** rng.uniform(-0.5, 1)
     counts = tuple(int(np.random.default_rng(rng.getrandbits(32)).poisson(min(rng.gammavariate(shape, mean / shape) * s, 1e6))) for s in t)
     e = np.array(t) * sum(counts) / sum(t)
-    return (counts, t) if sum(counts) and ((np.array(counts) - e) ** 2 / e).sum() > 2 * cells else gamma_input()
+    # the likelihood has a maximum where its score against one common rate says so: sum of (x - e)^2 - x
+    return (counts, t) if sum(counts) and ((np.array(counts) - e) ** 2 - counts).sum() > sum(counts) else gamma_input()
 
 
 def plan_input():
