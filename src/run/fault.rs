@@ -93,8 +93,10 @@ impl Armed {
                 Effect { blind: false }
             }
             Fault::Hang { after } => {
-                while elapsed >= after {
-                    std::thread::park();
+                if elapsed >= after {
+                    loop {
+                        std::thread::park();
+                    }
                 }
                 Effect { blind: false }
             }

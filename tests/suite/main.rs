@@ -2,6 +2,7 @@
 
 mod bad_input;
 mod host;
+mod house;
 mod ledger;
 mod outside;
 mod running;
