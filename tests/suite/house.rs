@@ -24,7 +24,8 @@ fn references_are_made_of_integers_and_know_nothing_of_the_kernels() {
 #[test]
 fn the_readme_has_the_verdict_rules_as_they_are() {
     let readme = std::fs::read_to_string(Path::new(env!("CARGO_MANIFEST_DIR")).join("README.md")).unwrap();
-    let rows: Vec<&str> = readme.lines().skip_while(|l| *l != "| when | verdict |").skip(2).take_while(|l| l.starts_with('|')).collect();
+    let rows: Vec<&str> =
+        readme.lines().skip_while(|l| *l != "| when | verdict |").skip(2).take_while(|l| l.starts_with('|')).collect();
     let expected: Vec<String> = RULES.iter().map(|r| format!("| {} | {} |", r.when, r.then)).collect();
     assert_eq!(rows, expected);
 }

@@ -2,6 +2,7 @@
 //! after MixColumns the rounds take the order of FIPS 197.
 
 use std::arch::aarch64::*;
+use std::arch::asm;
 
 use super::common_aes::{Block, Rounds};
 
@@ -18,56 +19,29 @@ impl Arm {
     }
 }
 
-// The intrinsics are inlined only into functions that name their feature; these are, into the kernel's wrapper.
-
-#[inline]
-#[target_feature(enable = "neon,aes")]
-fn forward(x: uint8x16_t) -> uint8x16_t {
-    vaeseq_u8(x, vdupq_n_u8(0))
+/// Makes one function of a row of instructions on one block. Inline assembly, because the intrinsics would stay calls:
+/// the compiler inlines them only into functions that name their feature, which a generic body cannot.
+macro_rules! instructions {
+    ($name:ident: $($line:literal),+) => {
+        /// # Safety
+        /// The CPU must have `aes`.
+        #[inline(always)]
+        unsafe fn $name(mut x: uint8x16_t) -> uint8x16_t {
+            // SAFETY: the caller proved aes; the block touches nothing but its two registers
+            unsafe {
+                asm!(".arch_extension aes", $($line),+, x = inout(vreg) x, zero = in(vreg) vdupq_n_u8(0),
+                    options(pure, nomem, nostack, preserves_flags));
+            }
+            x
+        }
+    };
 }
 
-#[inline]
-#[target_feature(enable = "neon,aes")]
-fn backward(x: uint8x16_t) -> uint8x16_t {
-    vaesdq_u8(x, vdupq_n_u8(0))
-}
-
-#[inline]
-#[target_feature(enable = "neon,aes")]
-fn encrypt(x: uint8x16_t, k: uint8x16_t) -> uint8x16_t {
-    veorq_u8(vaesmcq_u8(forward(x)), k)
-}
-
-#[inline]
-#[target_feature(enable = "neon,aes")]
-fn encrypt_last(x: uint8x16_t, k: uint8x16_t) -> uint8x16_t {
-    veorq_u8(forward(x), k)
-}
-
-#[inline]
-#[target_feature(enable = "neon,aes")]
-fn decrypt(x: uint8x16_t, k: uint8x16_t) -> uint8x16_t {
-    veorq_u8(vaesimcq_u8(backward(x)), k)
-}
-
-#[inline]
-#[target_feature(enable = "neon,aes")]
-fn decrypt_last(x: uint8x16_t, k: uint8x16_t) -> uint8x16_t {
-    veorq_u8(backward(x), k)
-}
-
-#[inline]
-#[target_feature(enable = "neon,aes")]
-fn inverse_mix(k: uint8x16_t) -> uint8x16_t {
-    vaesimcq_u8(k)
-}
-
-/// SubBytes of four equal columns, which ShiftRows leaves as they are.
-#[inline]
-#[target_feature(enable = "neon,aes")]
-fn sub_word(w: u32) -> u32 {
-    vgetq_lane_u32::<0>(vreinterpretq_u32_u8(forward(vreinterpretq_u8_u32(vdupq_n_u32(w)))))
-}
+instructions!(forward: "aese {x:v}.16b, {zero:v}.16b");
+instructions!(backward: "aesd {x:v}.16b, {zero:v}.16b");
+instructions!(forward_mix: "aese {x:v}.16b, {zero:v}.16b", "aesmc {x:v}.16b, {x:v}.16b");
+instructions!(backward_mix: "aesd {x:v}.16b, {zero:v}.16b", "aesimc {x:v}.16b, {x:v}.16b");
+instructions!(inverse_mix: "aesimc {x:v}.16b, {x:v}.16b", "/* {zero:v} */");
 
 impl Rounds for Arm {
     type Blocks = uint8x16_t;
@@ -99,25 +73,25 @@ impl Rounds for Arm {
     #[inline(always)]
     fn encrypt(self, x: uint8x16_t, k: uint8x16_t) -> uint8x16_t {
         // SAFETY: the caller of `Arm::new` proved aes
-        unsafe { encrypt(x, k) }
+        unsafe { veorq_u8(forward_mix(x), k) }
     }
 
     #[inline(always)]
     fn encrypt_last(self, x: uint8x16_t, k: uint8x16_t) -> uint8x16_t {
         // SAFETY: the caller of `Arm::new` proved aes
-        unsafe { encrypt_last(x, k) }
+        unsafe { veorq_u8(forward(x), k) }
     }
 
     #[inline(always)]
     fn decrypt(self, x: uint8x16_t, k: uint8x16_t) -> uint8x16_t {
         // SAFETY: the caller of `Arm::new` proved aes
-        unsafe { decrypt(x, k) }
+        unsafe { veorq_u8(backward_mix(x), k) }
     }
 
     #[inline(always)]
     fn decrypt_last(self, x: uint8x16_t, k: uint8x16_t) -> uint8x16_t {
         // SAFETY: the caller of `Arm::new` proved aes
-        unsafe { decrypt_last(x, k) }
+        unsafe { veorq_u8(backward(x), k) }
     }
 
     #[inline(always)]
@@ -131,7 +105,8 @@ impl Rounds for Arm {
 
     #[inline(always)]
     fn sub_word(self, w: u32) -> u32 {
+        // SubBytes of four equal columns, which ShiftRows leaves as they are
         // SAFETY: the caller of `Arm::new` proved aes
-        unsafe { sub_word(w) }
+        unsafe { vgetq_lane_u32::<0>(vreinterpretq_u32_u8(forward(vreinterpretq_u8_u32(vdupq_n_u32(w))))) }
     }
 }
