@@ -288,6 +288,8 @@ pub enum How {
     Hung,
     /// Stopped by a signal from outside and left so until its deadline.
     Stopped,
+    /// Gave no answer by its deadline, but was kept from running by others on the machine.
+    Starved,
     /// Sent something that is no message of the protocol.
     Babbled(String),
     /// Could not be started.
@@ -308,6 +310,7 @@ impl fmt::Display for How {
             How::Exit(code) => write!(f, "ended by itself with status {code}"),
             How::Hung => f.write_str("gave no answer by its deadline"),
             How::Stopped => f.write_str("stopped from outside until its deadline"),
+            How::Starved => f.write_str("kept from running by others until its deadline"),
             How::Babbled(what) => write!(f, "sent no valid message: {what}"),
             How::NotStarted(why) => write!(f, "could not be started: {why}"),
             How::NotPinned(why) => write!(f, "could not be held on its cpu: {why}"),

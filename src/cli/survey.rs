@@ -167,10 +167,21 @@ fn text(survey: &Survey) -> String {
         ]);
     }
     let _ = write!(out, "\n{}", table.text());
-    let mut table = Table::new(&["kernel", "variants", "skipped here"]);
+    let unexecuted =
+        survey.kernels.iter().flat_map(|k| &k.variants).filter(|v| v.proven.starts_with("unverified")).count();
+    if unexecuted > 0 {
+        let _ = writeln!(
+            out,
+            "\n{unexecuted} variants marked * are unverified: compiled and disassembled, never executed by their authors."
+        );
+    }
+    let mut table = Table::new(&["kernel", "variants", "built, but not for this cpu"]);
     for k in &survey.kernels {
-        let names: Vec<&str> = k.variants.iter().map(|v| v.variant).collect();
-        let skipped: Vec<String> = k.skipped.iter().map(|s| format!("{} ({})", s.variant, s.why)).collect();
+        let mark = |v: &VariantLine| if v.proven.starts_with("unverified") { "*" } else { "" };
+        let names: Vec<String> = k.variants.iter().map(|v| format!("{}{}", v.variant, mark(v))).collect();
+        // what was never built for this architecture is in the document; here only what this cpu lacks
+        let lacking = k.skipped.iter().filter(|s| s.why.starts_with("cpu lacks"));
+        let skipped: Vec<String> = lacking.map(|s| format!("{} ({})", s.variant, s.why)).collect();
         table.row([k.kernel.to_owned(), names.join(" "), skipped.join("; ")]);
     }
     let _ = write!(out, "\n{}", table.text());

@@ -77,7 +77,7 @@ pub fn speaks_of_core(how: &How) -> bool {
     match how {
         How::Signal(n) => ![libc_signal::KILL, libc_signal::TERM, libc_signal::INT, libc_signal::HUP].contains(n),
         How::Hung | How::Exit(_) | How::Babbled(_) => true,
-        How::Stopped | How::NotStarted(_) | How::NotPinned(_) | How::Abandoned => false,
+        How::Stopped | How::Starved | How::NotStarted(_) | How::NotPinned(_) | How::Abandoned => false,
     }
 }
 
@@ -218,6 +218,8 @@ mod tests {
         for how in [How::Signal(11), How::Signal(4), How::Hung, How::Exit(101)] {
             assert_eq!(known(|k| k.lost = vec![how]), Verdict::Watch);
         }
-        assert_eq!(known(|k| k.lost = vec![How::Stopped]), Verdict::Clear);
+        for how in [How::Stopped, How::Starved, How::Abandoned] {
+            assert_eq!(known(|k| k.lost = vec![how]), Verdict::Clear);
+        }
     }
 }

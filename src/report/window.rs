@@ -286,9 +286,10 @@ impl WindowReport {
         let share = self.kernel_share * 100.0;
         let _ = writeln!(
             out,
-            "{} on {} cpus in {:.1} s of {:.0} s; {share:.1} % of their time inside kernels",
+            "{} on {} cpu{} in {:.1} s of {:.0} s; {share:.1} % of the time inside kernels",
             self.verdict.to_string().to_uppercase(),
             self.cores.len(),
+            if self.cores.len() == 1 { "" } else { "s" },
             self.wall_s,
             self.budget_s
         );

@@ -1,6 +1,7 @@
 //! A worker as the supervisor's side sees it: a process, a thread that reads what it says, a thread that writes to it.
 
 use std::io::{self, BufReader, Write};
+use std::os::unix::process::CommandExt;
 use std::path::Path;
 use std::process::{Command, Stdio};
 use std::sync::mpsc::{Sender, channel};
@@ -11,11 +12,24 @@ use nix::sys::wait::{WaitPidFlag, WaitStatus, waitpid};
 use nix::unistd::Pid;
 
 use super::protocol::{Message, Order, Received, receive};
+use super::spec::Pulse;
 use crate::event::How;
 use crate::host::Cpu;
 
 /// What a child's reader hands on: cpu, which of its workers, what.
 pub type Heard = (Cpu, u64, Received<Message>);
+
+impl Pulse {
+    /// From `/proc/PID/stat` (proc_pid_stat(5), from memory): the state is the first field after the name in
+    /// parentheses, utime and stime are the 12th and 13th, in ticks of 1/100 s on every Linux ABI.
+    fn parse(stat: &str) -> Option<Pulse> {
+        let mut fields = stat.rsplit_once(')')?.1.split_ascii_whitespace();
+        let state = fields.next()?.chars().next()?;
+        let mut times = fields.skip(10);
+        let ticks = times.next()?.parse::<u64>().ok()? + times.next()?.parse::<u64>().ok()?;
+        Some(Pulse { waiting: matches!(state, 'R' | 'D'), busy: Duration::from_millis(ticks * 10) })
+    }
+}
 
 /// One worker process.
 pub struct Child {
@@ -33,6 +47,8 @@ impl Child {
             .args(["worker", "--cpu", &cpu.to_string()])
             .stdin(Stdio::piped())
             .stdout(Stdio::piped())
+            // a Ctrl-C is meant for the supervisor, which ends its workers when they have reported
+            .process_group(0)
             // a worker's last words are no part of the report; its exit status is
             .stderr(Stdio::null())
             .spawn()?;
@@ -60,6 +76,12 @@ impl Child {
             }
         });
         Ok(Child { pid, generation, orders, ended: None })
+    }
+
+    /// What the system says of its main thread; none when it is gone.
+    pub fn pulse(&self) -> Option<Pulse> {
+        let stat = std::fs::read_to_string(format!("/proc/{}/stat", self.pid)).ok()?;
+        Pulse::parse(&stat)
     }
 
     /// Queues an order.
@@ -117,5 +139,18 @@ impl Child {
             self.ended = Some(How::Signal(Signal::SIGKILL as i32));
             std::thread::spawn(move || waitpid(pid, None));
         }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn state_and_processor_time_are_found_behind_any_name() {
+        let stat = "4711 (a) R (b) S 1 4711 4711 0 -1 4194304 100 0 0 0 250 50 0 0 20 0 2 0 12345 1000 100";
+        assert_eq!(Pulse::parse(stat), Some(Pulse { waiting: false, busy: Duration::from_secs(3) }));
+        assert_eq!(Pulse::parse("4711 (worker) R 1"), None);
+        assert_eq!(Pulse::parse(""), None);
     }
 }

@@ -126,7 +126,8 @@ pub fn run(
 impl Driver<'_> {
     fn now(&mut self, cpu: Option<Cpu>) -> Now {
         let surroundings = cpu.map_or_else(Surroundings::default, |c| self.director.surroundings(c));
-        Now { at: self.start.elapsed(), wall_ms: unix_ms(), surroundings }
+        let pulse = cpu.and_then(|c| self.children.get(&c)).and_then(Child::pulse);
+        Now { at: self.start.elapsed(), wall_ms: unix_ms(), surroundings, pulse }
     }
 
     fn feed(&mut self, cpu: Option<Cpu>, input: Input) {
@@ -197,6 +198,10 @@ impl Driver<'_> {
                     if let Some(child) = self.children.get(&cpu) {
                         child.order(&order);
                     }
+                }
+                Action::Feel(cpu) => {
+                    let pulse = self.children.get(&cpu).and_then(Child::pulse);
+                    self.feed(None, Input::Felt(cpu, pulse));
                 }
                 Action::Kill(cpu) => {
                     if let Some(child) = self.children.remove(&cpu) {

@@ -35,6 +35,8 @@ pub(super) struct Flight {
     /// When it became the worker's next slice.
     pub ordered: Duration,
     pub begun: Option<Duration>,
+    /// Processor time of the worker when the slice began.
+    pub busy_before: Duration,
     pub wall_ms: u64,
     pub surroundings: Surroundings,
 }
@@ -58,6 +60,7 @@ impl Flight {
             expected,
             ordered: Duration::ZERO,
             begun: None,
+            busy_before: Duration::ZERO,
             wall_ms: 0,
             surroundings: Surroundings::default(),
         })
@@ -110,6 +113,8 @@ pub(super) struct Lane {
     pub checking: Vec<(Flight, SliceReport)>,
     pub losses: u32,
     pub stopped: bool,
+    /// Late, and the system has been asked after it.
+    pub asked: bool,
     pub previous_kernel: Option<&'static str>,
 }
 
@@ -125,6 +130,7 @@ impl Lane {
             checking: Vec::new(),
             losses: 0,
             stopped: false,
+            asked: false,
             previous_kernel: None,
         }
     }
@@ -137,6 +143,7 @@ impl Lane {
     pub fn take_flight(&mut self, slice: u64, now: Duration) -> Option<Flight> {
         let index = self.flights.iter().position(|f| f.slice == slice)?;
         let flight = self.flights.remove(index);
+        self.asked = false;
         if let Some(next) = self.flights.front_mut() {
             next.ordered = now;
         }
@@ -175,6 +182,17 @@ impl Lane {
             Span::Fixed(span) => span.min(left),
         };
         Some((spec, span))
+    }
+
+    /// Moves every time that patience is counted from: for a while nobody could have answered.
+    pub fn forgive(&mut self, held_up: Duration) {
+        if let Worker::Starting(since) = &mut self.worker {
+            *since += held_up;
+        }
+        for flight in &mut self.flights {
+            flight.ordered += held_up;
+            flight.begun = flight.begun.map(|at| at + held_up);
+        }
     }
 
     /// When patience with this worker ends: a slice that is not begun, or not ended, in time.

@@ -96,6 +96,8 @@ pub enum Input {
     Gone(Cpu, How),
     /// A worker was stopped by a signal from outside (true), or goes on (false).
     Stopped(Cpu, bool),
+    /// What the system says of a worker that was asked after.
+    Felt(Cpu, Option<Pulse>),
     /// The second opinion on a slice's folds.
     Checked(Opinion),
     /// The judge wants more.
@@ -141,6 +143,8 @@ pub enum Action {
     Start(Cpu),
     /// Send an order.
     Order(Cpu, Order),
+    /// Ask the system after a worker that is late.
+    Feel(Cpu),
     /// End a worker at once.
     Kill(Cpu),
     /// Have folds checked on another core.
@@ -149,6 +153,15 @@ pub enum Action {
     Record(Event),
     /// All is over.
     Finish(Ending),
+}
+
+/// What the system says of a worker's main thread.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Pulse {
+    /// It could run, or waits for the system, and is not asleep or stopped of itself.
+    pub waiting: bool,
+    /// Processor time that the worker has used since it was started.
+    pub busy: Duration,
 }
 
 /// The clock and sensors of the moment, handed to the supervisor with every input.
@@ -160,4 +173,6 @@ pub struct Now {
     pub wall_ms: u64,
     /// Readings of the cpu that the input speaks of.
     pub surroundings: Surroundings,
+    /// The worker that the input comes from.
+    pub pulse: Option<Pulse>,
 }

@@ -10,7 +10,7 @@ use std::time::Duration;
 
 use super::lane::{Flight, Lane, Worker};
 use super::protocol::{Message, Order, SliceReport, WrongOutput};
-use super::spec::{Action, FoldTask, Input, Now, Opinion, Request, Setup, Truth};
+use super::spec::{Action, FoldTask, Input, Now, Opinion, Pulse, Request, Setup, Truth};
 use crate::event::{
     Assignment, Ending, Event, FoldCheck, How, Intent, Lost, Mismatch, NoticedBy, Remark, Slice, WrongWord,
 };
@@ -22,6 +22,11 @@ const TAIL: Duration = Duration::from_millis(120);
 const SHORTEST: Duration = Duration::from_millis(4);
 /// A worker that is not ready by then was not started.
 const READY_WITHIN: Duration = Duration::from_secs(10);
+/// Inputs come far more often than this; a longer silence means that the program itself was held up (a frozen control
+/// group, a suspended machine, a disk that took seconds), and with it everybody's chance to answer.
+const SILENCE: Duration = Duration::from_millis(400);
+/// A late worker that could have run, but had less of its processor than this, was starved by others.
+const STARVED_BELOW: f64 = 0.5;
 /// After a halt, answers are waited for this long.
 const HALT_WITHIN: Duration = Duration::from_millis(400);
 
@@ -33,6 +38,7 @@ pub struct Supervisor {
     next_slice: u64,
     ending: Option<(Ending, Duration)>,
     finished: bool,
+    last_input: Duration,
     actions: Vec<Action>,
 }
 
@@ -40,11 +46,21 @@ impl Supervisor {
     /// A supervisor for one job; the first actions start the workers.
     pub fn new(setup: Setup, truth: Box<dyn Truth>) -> Supervisor {
         let lanes = setup.tracks.iter().map(|t| (t.cpu, Lane::new(t))).collect();
-        Supervisor { setup, truth, lanes, next_slice: 0, ending: None, finished: false, actions: Vec::new() }
+        Supervisor {
+            setup,
+            truth,
+            lanes,
+            next_slice: 0,
+            ending: None,
+            finished: false,
+            last_input: Duration::ZERO,
+            actions: Vec::new(),
+        }
     }
 
     /// Starts every worker.
     pub fn begin(&mut self, now: Now) -> Vec<Action> {
+        self.last_input = now.at;
         for lane in self.lanes.values_mut() {
             lane.worker = Worker::Starting(now.at);
             self.actions.push(Action::Start(lane.cpu));
@@ -57,6 +73,7 @@ impl Supervisor {
         if self.finished {
             return Vec::new();
         }
+        self.held_up(now);
         match input {
             Input::Said(cpu, message) => self.said(now, cpu, message),
             Input::Babbled(cpu, text) => {
@@ -69,6 +86,7 @@ impl Supervisor {
                     lane.stopped = stopped;
                 }
             }
+            Input::Felt(cpu, pulse) => self.felt(now, cpu, pulse),
             Input::Checked(opinion) => self.checked(now, opinion),
             Input::Wanted(requests) => self.wanted(requests),
             Input::Interrupt => self.halt(now, Ending::Signal),
@@ -117,6 +135,7 @@ impl Supervisor {
             Message::Begun { slice } => match lane.flights.iter_mut().find(|f| f.slice == slice) {
                 Some(flight) => {
                     flight.begun = Some(now.at);
+                    flight.busy_before = now.pulse.map_or(Duration::ZERO, |p| p.busy);
                     flight.wall_ms = now.wall_ms;
                     lane.stopped = false;
                 }
@@ -334,6 +353,7 @@ impl Supervisor {
         lane.losses += 1;
         lane.worker = if lane.losses >= self.setup.losses_borne || ending { Worker::GivenUp } else { Worker::Down };
         lane.stopped = false;
+        lane.asked = false;
         let core = lane.core;
         let mut flights = std::mem::take(&mut lane.flights).into_iter();
         let given_up = lane.worker == Worker::GivenUp && !ending;
@@ -434,17 +454,48 @@ impl Supervisor {
 
     fn overdue(&mut self, now: Now, cpu: Cpu) {
         let grace = self.setup.grace;
-        let Some(lane) = self.lanes.get(&cpu) else { return };
+        let Some(lane) = self.lanes.get_mut(&cpu) else { return };
         if lane.deadline(grace, READY_WITHIN).is_none_or(|deadline| now.at < deadline) {
             return;
         }
         let how = match lane.worker {
             Worker::Starting(_) => How::NotStarted("not ready in time".to_owned()),
             _ if lane.stopped => How::Stopped,
-            _ => How::Hung,
+            _ if lane.asked => return,
+            _ => {
+                lane.asked = true;
+                self.actions.push(Action::Feel(cpu));
+                return;
+            }
         };
         self.lose(now, cpu, how);
         self.actions.push(Action::Kill(cpu));
+    }
+
+    /// A late worker that the machine did not let run is not held against its core.
+    fn felt(&mut self, now: Now, cpu: Cpu, pulse: Option<Pulse>) {
+        let Some(flight) = self.lanes.get(&cpu).filter(|l| l.asked).and_then(|l| l.flights.front()) else { return };
+        let waited = now.at.saturating_sub(flight.begun.unwrap_or(flight.ordered));
+        let starved = pulse.is_some_and(|p| {
+            let ran = p.busy.saturating_sub(flight.busy_before);
+            p.waiting && ran.as_secs_f64() < STARVED_BELOW * waited.as_secs_f64()
+        });
+        self.lose(now, cpu, if starved { How::Starved } else { How::Hung });
+        self.actions.push(Action::Kill(cpu));
+    }
+
+    fn held_up(&mut self, now: Now) {
+        let silence = now.at.saturating_sub(self.last_input);
+        self.last_input = now.at;
+        if silence < SILENCE {
+            return;
+        }
+        self.lanes.values_mut().for_each(|l| l.forgive(silence));
+        let text = format!(
+            "the program itself was held up for {:.1} s; no worker's lateness in it counts",
+            silence.as_secs_f64()
+        );
+        self.remark(now, text);
     }
 
     fn restart(&mut self, now: Now, cpu: Cpu) {

@@ -4,7 +4,8 @@
 use std::collections::VecDeque;
 use std::io::{self, BufReader, Write};
 use std::process::ExitCode;
-use std::sync::atomic::{AtomicU64, Ordering};
+use std::sync::Arc;
+use std::sync::atomic::{AtomicBool, AtomicU64, Ordering};
 use std::sync::mpsc::{Receiver, channel};
 use std::time::{Duration, Instant, SystemTime, UNIX_EPOCH};
 
@@ -35,6 +36,15 @@ pub fn main(args: WorkerArgs) -> ExitCode {
         let refused = Message::Refused { slice: 0, why: format!("cannot be held on cpu {}: {why}", args.cpu) };
         let _ = send(&mut out, &refused);
         return ExitCode::from(3);
+    }
+    // whoever signals the whole group means the supervisor, which lets this worker report first; that its input ends is
+    // what ends a worker
+    for signal in [libc::SIGINT, libc::SIGTERM, libc::SIGHUP] {
+        if let Err(why) = signal_hook::flag::register(signal, Arc::new(AtomicBool::new(false))) {
+            let _ =
+                send(&mut out, &Message::Refused { slice: 0, why: format!("cannot set signal {signal} aside: {why}") });
+            return ExitCode::from(3);
+        }
     }
     let orders = listen();
     let Ok(place) = pinning::place() else { return ExitCode::from(3) };

@@ -257,3 +257,37 @@ fn a_killed_window_is_attributed_by_the_next_and_only_once() {
     let report = json(&window(&scratch, "2s", &[]).wait_with_output().unwrap());
     assert_eq!(cut_off(&report), 0, "{report:#}");
 }
+
+#[test]
+fn a_signal_to_every_process_at_once_still_gives_a_whole_report() {
+    let _turn = alone();
+    let scratch = Scratch::new("everyone");
+    let child = window(&scratch, "10m", &[]);
+    let workers: Vec<Pid> = cpus().into_iter().map(|cpu| worker(&child, cpu)).collect();
+    std::thread::sleep(Duration::from_millis(1200));
+    for pid in workers {
+        kill(pid, Signal::SIGTERM).unwrap();
+    }
+    kill(Pid::from_raw(child.id() as i32), Signal::SIGTERM).unwrap();
+    let report = json(&child.wait_with_output().unwrap());
+    assert_eq!((&report["lost"], &report["ending"]), (&Value::Array(vec![]), &Value::from("signal")), "{report:#}");
+    assert!(report["cores"].as_array().unwrap().iter().all(|c| c["runs"].as_u64() > Some(0)));
+}
+
+#[test]
+fn a_supervisor_that_was_held_up_blames_nobody() {
+    let _turn = alone();
+    let scratch = Scratch::new("held-up");
+    let child = window(&scratch, "9s", &[]);
+    let supervisor = Pid::from_raw(child.id() as i32);
+    let everyone: Vec<Pid> = cpus().into_iter().map(|cpu| worker(&child, cpu)).chain([supervisor]).collect();
+    std::thread::sleep(Duration::from_millis(1200));
+    // as a frozen control group would have it: the workers first, all of them for longer than any deadline
+    everyone.iter().for_each(|pid| kill(*pid, Signal::SIGSTOP).unwrap());
+    std::thread::sleep(Duration::from_millis(4500));
+    everyone.iter().for_each(|pid| kill(*pid, Signal::SIGCONT).unwrap());
+    let output = child.wait_with_output().unwrap();
+    let report = json(&output);
+    assert_eq!((output.status.code(), &report["verdict"]), (Some(0), &Value::from("clear")), "{report:#}");
+    assert!(report["remarks"].to_string().contains("held up"), "{report:#}");
+}

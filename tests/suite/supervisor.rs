@@ -11,7 +11,7 @@ use proofhouse::event::{Ending, Event, How, Job, Purpose, Surroundings};
 use proofhouse::host::Cpu;
 use proofhouse::run::pinning::Place;
 use proofhouse::run::protocol::{CaseReport, Message, Order, SliceOrder, SliceReport, WrongOutput};
-use proofhouse::run::spec::{Action, FoldTask, Input, Now, Opinion, Setup, Span, Spec, Track, Truth};
+use proofhouse::run::spec::{Action, FoldTask, Input, Now, Opinion, Pulse, Setup, Span, Spec, Track, Truth};
 use proofhouse::run::supervisor::Supervisor;
 use rand_chacha::ChaCha12Rng;
 use rand_chacha::rand_core::{Rng, SeedableRng};
@@ -38,6 +38,7 @@ enum Deed {
     Babble,
     Moved,
     Stop,
+    Starve,
     ForeignReport,
 }
 
@@ -58,13 +59,25 @@ struct World {
     disk_fails_at: Option<Duration>,
     disk_failed: bool,
     halted: BTreeMap<Cpu, u64>,
+    pulses: BTreeMap<Cpu, Pulse>,
+    /// Cpus whose worker says nothing any more.
+    silent: BTreeSet<Cpu>,
+    /// Moments at which the whole machine stands still for some seconds.
+    freezes: Vec<Duration>,
+    /// When the last of them ended.
+    thawed: Duration,
 }
 
 type NewsKey = (u32, u64);
 
 impl World {
     fn now(&self) -> Now {
-        Now { at: self.at, wall_ms: 1_000_000 + self.at.as_millis() as u64, surroundings: Surroundings::default() }
+        Now {
+            at: self.at,
+            wall_ms: 1_000_000 + self.at.as_millis() as u64,
+            surroundings: Surroundings::default(),
+            pulse: None,
+        }
     }
 
     fn chance(&mut self, one_in: u64) -> bool {
@@ -83,6 +96,9 @@ impl World {
     }
 
     fn work(&mut self, cpu: Cpu, order: SliceOrder) {
+        if self.silent.contains(&cpu) {
+            return;
+        }
         let free = self.worker_free.get(&cpu).copied().unwrap_or(self.at).max(self.at);
         let wait = free - self.at + Duration::from_micros(100);
         let span = Duration::from_nanos(order.span_ns);
@@ -94,17 +110,25 @@ impl World {
             (true, 3) => Deed::Moved,
             (true, 4) => Deed::Stop,
             (true, 5) => Deed::ForeignReport,
+            (true, 10) => Deed::Starve,
             (true, 6 | 7) => Deed::Blind,
             (true, 8 | 9) => Deed::Wrong,
             (true, _) => Deed::Right,
         };
         *self.deeds.entry(deed).or_default() += 1;
         self.schedule(wait, cpu, Input::Said(cpu, Message::Begun { slice: order.slice }));
+        if matches!(deed, Deed::Crash | Deed::Hang | Deed::Stop | Deed::Starve) {
+            self.silent.insert(cpu);
+        }
         let middle = wait + span / 2;
         let place = if deed == Deed::Moved { World::here(Cpu(cpu.0 + 1)) } else { World::here(cpu) };
         match deed {
             Deed::Crash => return self.schedule(middle, cpu, Input::Gone(cpu, How::Signal(11))),
-            Deed::Hang => return,
+            Deed::Hang | Deed::Starve => {
+                // the pulse that the system would show: asleep, or runnable without having run
+                self.pulses.insert(cpu, Pulse { waiting: deed == Deed::Starve, busy: Duration::from_millis(1) });
+                return;
+            }
             Deed::Stop => return self.schedule(middle, cpu, Input::Stopped(cpu, true)),
             Deed::Babble => self.schedule(middle, cpu, Input::Babbled(cpu, "?".into())),
             Deed::Wrong | Deed::Moved => {
@@ -168,6 +192,7 @@ impl World {
                 Action::Start(cpu) => {
                     *self.generation.entry(cpu).or_default() += 1;
                     self.worker_free.remove(&cpu);
+                    self.silent.remove(&cpu);
                     let ready = Input::Said(cpu, Message::Ready { place: World::here(cpu) });
                     self.schedule(Duration::from_millis(2), cpu, ready);
                 }
@@ -175,6 +200,12 @@ impl World {
                 Action::Order(cpu, Order::Slice(order)) => self.work(cpu, order),
                 Action::Order(cpu, Order::Halt { upto }) => {
                     self.halted.insert(cpu, upto);
+                }
+                Action::Feel(cpu) => {
+                    let input = Input::Felt(cpu, self.pulses.get(&cpu).copied());
+                    let now = self.now();
+                    let more = self.supervisor.feed(now, input);
+                    self.carry_out(more);
                 }
                 Action::Kill(cpu) => {
                     *self.generation.entry(cpu).or_default() += 1;
@@ -211,6 +242,23 @@ impl World {
             let next = self.queue.peek().map_or(Duration::MAX, |Reverse((at, ..))| *at);
             let wait = self.supervisor.next_deadline().min(next).min(self.at + Duration::from_millis(20));
             self.at = wait.max(self.at);
+            if let Some(i) = self.freezes.iter().position(|f| *f <= self.at) {
+                // everything due meanwhile comes late; nobody is to blame
+                self.freezes.swap_remove(i);
+                self.at += Duration::from_millis(500 + self.rng.next_u64() % 4000);
+                self.thawed = self.at;
+                let late: Vec<_> = self
+                    .queue
+                    .drain()
+                    .map(|Reverse((at, t, z, k))| Reverse((at.max(self.at) + Duration::from_millis(1), t, z, k)))
+                    .collect();
+                self.queue.extend(late);
+                self.ticks += 1;
+                let now = self.now();
+                let actions = self.supervisor.feed(now, Input::Tick);
+                self.carry_out(actions);
+                continue;
+            }
             if let Some(at) = interrupt
                 && !interrupted
                 && self.at >= at
@@ -278,6 +326,7 @@ fn world(seed: u64) -> World {
         BTreeSet::new()
     };
     let disk_fails_at = rng.next_u64().is_multiple_of(12).then(|| Duration::from_millis(rng.next_u64() % 25_000));
+    let freezes = (0..rng.next_u64() % 3).map(|_| Duration::from_millis(rng.next_u64() % 18_000)).collect();
     World {
         rng,
         at: Duration::ZERO,
@@ -294,12 +343,17 @@ fn world(seed: u64) -> World {
         disk_fails_at,
         disk_failed: false,
         halted: BTreeMap::new(),
+        pulses: BTreeMap::new(),
+        silent: BTreeSet::new(),
+        freezes,
+        thawed: Duration::ZERO,
     }
 }
 
 fn check(world: &World, seed: u64) {
     let (ending, at) = world.ended.unwrap();
-    assert!(at <= BUDGET + Duration::from_millis(500), "seed {seed}: ended at {at:?}");
+    // a machine that stands still past the end cannot be answered for
+    assert!(at <= BUDGET.max(world.thawed) + Duration::from_millis(500), "seed {seed}: ended at {at:?}");
     let mut intents = BTreeSet::new();
     let mut settled = BTreeMap::new();
     for event in &world.events {
@@ -315,6 +369,11 @@ fn check(world: &World, seed: u64) {
             Event::Lost(l) => Some(l.cpu),
             _ => None,
         };
+        if let Event::Lost(l) = event {
+            let deeds = |d| world.deeds.get(&d).copied().unwrap_or(0);
+            assert!(l.how != How::Hung || deeds(Deed::Hang) > 0, "seed {seed}: called hung without a hang: {event:?}");
+            assert!(l.how != How::Starved || deeds(Deed::Starve) > 0, "seed {seed}: {event:?}");
+        }
         if let Some(cpu) = accused {
             assert!(world.faulty.contains(&cpu), "seed {seed}: healthy cpu {cpu} accused by {event:?}");
         }
@@ -369,8 +428,10 @@ fn wrong_and_blind_workers_are_noticed_every_time() {
         let done = |deed| world.deeds.get(&deed).copied().unwrap_or(0);
         let ordered = done(Deed::Wrong) + done(Deed::Blind);
         // a slice that was cut off at the end, or that waited behind a lost one, may not have come to it
-        let lost: u64 =
-            [Deed::Crash, Deed::Hang, Deed::Babble, Deed::Stop, Deed::ForeignReport].into_iter().map(done).sum();
+        let lost: u64 = [Deed::Crash, Deed::Hang, Deed::Babble, Deed::Stop, Deed::Starve, Deed::ForeignReport]
+            .into_iter()
+            .map(done)
+            .sum();
         assert!(mismatches + lost + 2 >= ordered, "seed {seed}: {mismatches} noticed of {ordered}");
     }
 }
