@@ -8,6 +8,7 @@ pub mod fault;
 mod lane;
 pub mod pinning;
 pub mod protocol;
+mod records;
 pub mod spec;
 pub mod supervisor;
 pub mod worker;

@@ -10,10 +10,9 @@ use std::time::Duration;
 
 use super::lane::{Flight, Lane, Worker};
 use super::protocol::{Message, Order, SliceReport, WrongOutput};
+use super::records::About;
 use super::spec::{Action, FoldTask, Input, Now, Opinion, Pulse, Request, Setup, Truth};
-use crate::event::{
-    Assignment, Ending, Event, FoldCheck, How, Intent, Lost, Mismatch, NoticedBy, Remark, Slice, WrongWord,
-};
+use crate::event::{Ending, Event, How, Remark};
 use crate::host::Cpu;
 
 /// Kept free at the end of the budget for last answers and the closing record.
@@ -176,28 +175,8 @@ impl Supervisor {
             );
             return self.remark(now, text);
         }
-        let words = wrong.first.iter().map(|&(i, e, a)| WrongWord::new(i as usize, e, a)).collect();
-        let mismatch = Mismatch {
-            job_id: self.setup.job_id,
-            job: self.setup.job,
-            slice: wrong.slice,
-            purpose: flight.spec.purpose,
-            cpu,
-            core: lane.core,
-            kernel: flight.spec.kernel.to_owned(),
-            variant: flight.spec.variant.to_string(),
-            seed: Some(wrong.seed),
-            size: flight.spec.size.0,
-            condition: flight.condition.clone(),
-            wall_ms: wrong.wall_ms,
-            run: wrong.run,
-            noticed_by: NoticedBy::Comparison,
-            wrong_words: wrong.wrong_words,
-            words,
-            previous_kernel: lane.previous_kernel.map(str::to_owned),
-            neighbours,
-            surroundings: now.surroundings,
-        };
+        let about = About { setup: &self.setup, cpu, core: lane.core, flight };
+        let mismatch = about.mismatch(&wrong, lane.previous_kernel, neighbours, now.surroundings);
         self.actions.push(Action::Record(Event::Mismatch(mismatch)));
     }
 
@@ -238,102 +217,29 @@ impl Supervisor {
             format!("the worker was on cpu {} with mask {:?} instead of cpu {} alone", p.cpu, p.mask, lane.cpu)
         });
         let core = lane.core;
-        if let Some(text) = opinion.remark {
-            self.remark(now, text);
+        if let Some(text) = &opinion.remark {
+            self.remark(now, text.clone());
         }
         if void.is_none() {
             for &position in &opinion.wrong {
                 self.folded_wrong(&flight, &report, core, position, opinion.of);
             }
         }
-        let wrong: u64 = report.cases.iter().map(|c| c.wrong).sum();
-        // a wrong fold is at least one wrong output
-        let unseen = opinion.wrong.len() as u64;
-        let runs: u64 = report.cases.iter().map(|c| c.runs).sum();
-        let late = (!opinion.wrong.is_empty()).then_some((flight.wall_ms, flight.wall_ms));
-        let slice = Slice {
-            job_id: self.setup.job_id,
-            slice: flight.slice,
-            job: self.setup.job,
-            purpose: flight.spec.purpose,
-            cpu: opinion.of,
-            core,
-            kernel: flight.spec.kernel.to_owned(),
-            variant: flight.spec.variant.to_string(),
-            condition: flight.condition.clone(),
-            wall_ms: flight.wall_ms,
-            span_ns: report.span_ns,
-            busy_ns: report.busy_ns,
-            cases: report.cases.len() as u64,
-            runs,
-            operations: runs.saturating_mul(flight.work.amount),
-            unit: flight.work.unit.to_owned(),
-            mismatches: wrong + unseen,
-            mismatch_ms: report.wrong_ms.or(late),
-            fold: match opinion.on {
-                None => FoldCheck::NotChecked,
-                Some(_) if unseen > 0 => FoldCheck::Wrong,
-                Some(_) => FoldCheck::Right,
-            },
-            checked_on: opinion.on,
-            void,
-            surroundings: flight.surroundings,
-        };
+        let about = About { setup: &self.setup, cpu: opinion.of, core, flight: &flight };
+        let slice = about.slice(&report, &opinion, void);
         self.actions.push(Action::Record(Event::Slice(slice)));
     }
 
     fn folded_wrong(&mut self, flight: &Flight, report: &SliceReport, core: u32, position: usize, cpu: Cpu) {
-        let mismatch = Mismatch {
-            job_id: self.setup.job_id,
-            job: self.setup.job,
-            slice: flight.slice,
-            purpose: flight.spec.purpose,
-            cpu,
-            core,
-            kernel: flight.spec.kernel.to_owned(),
-            variant: flight.spec.variant.to_string(),
-            seed: report.cases.get(position).map(|c| c.seed),
-            size: flight.spec.size.0,
-            condition: flight.condition.clone(),
-            wall_ms: flight.wall_ms,
-            run: 0,
-            noticed_by: NoticedBy::Fold,
-            wrong_words: 0,
-            words: Vec::new(),
-            previous_kernel: None,
-            neighbours: self.neighbours(cpu),
-            surroundings: flight.surroundings,
-        };
+        let about = About { setup: &self.setup, cpu, core, flight };
+        let mismatch = about.folded_mismatch(report.cases.get(position).map(|c| c.seed), self.neighbours(cpu));
         self.actions.push(Action::Record(Event::Mismatch(mismatch)));
     }
 
     /// Records that nothing can be concluded from a slice; this also settles its intent.
     fn close_void(&mut self, now: Now, cpu: Cpu, flight: &Flight, why: String) {
         let core = self.lanes.get(&cpu).map_or(0, |l| l.core);
-        let slice = Slice {
-            job_id: self.setup.job_id,
-            slice: flight.slice,
-            job: self.setup.job,
-            purpose: flight.spec.purpose,
-            cpu,
-            core,
-            kernel: flight.spec.kernel.to_owned(),
-            variant: flight.spec.variant.to_string(),
-            condition: flight.condition.clone(),
-            wall_ms: now.wall_ms,
-            span_ns: 0,
-            busy_ns: 0,
-            cases: 0,
-            runs: 0,
-            operations: 0,
-            unit: flight.work.unit.to_owned(),
-            mismatches: 0,
-            mismatch_ms: None,
-            fold: FoldCheck::NotChecked,
-            checked_on: None,
-            void: Some(why),
-            surroundings: now.surroundings,
-        };
+        let slice = About { setup: &self.setup, cpu, core, flight }.void(now.wall_ms, now.surroundings, why);
         self.actions.push(Action::Record(Event::Slice(slice)));
     }
 
@@ -358,18 +264,8 @@ impl Supervisor {
         let mut flights = std::mem::take(&mut lane.flights).into_iter();
         let given_up = lane.worker == Worker::GivenUp && !ending;
         if let Some(flight) = flights.next() {
-            self.actions.push(Action::Record(Event::Lost(Lost {
-                job_id: self.setup.job_id,
-                job: self.setup.job,
-                slice: flight.slice,
-                cpu,
-                core,
-                kernel: flight.spec.kernel.to_owned(),
-                variant: flight.spec.variant.to_string(),
-                condition: flight.condition.clone(),
-                wall_ms: now.wall_ms,
-                how,
-            })));
+            let lost = About { setup: &self.setup, cpu, core, flight: &flight }.lost(now.wall_ms, how);
+            self.actions.push(Action::Record(Event::Lost(lost)));
         } else {
             self.remark(now, format!("the worker of cpu {cpu} {how} while it had no work"));
         }
@@ -533,24 +429,10 @@ impl Supervisor {
                 return true;
             }
         };
-        let assignment = Assignment {
-            cpu,
-            core: lane.core,
-            slice,
-            purpose: flight.spec.purpose,
-            kernel: flight.spec.kernel.to_owned(),
-            variant: flight.spec.variant.to_string(),
-            condition: flight.condition.clone(),
-        };
         flight.ordered = now.at;
         let order = flight.order();
+        let intent = About { setup: &self.setup, cpu, core: lane.core, flight: &flight }.intent(now.wall_ms);
         lane.flights.push_back(flight);
-        let intent = Intent {
-            job_id: self.setup.job_id,
-            job: self.setup.job,
-            wall_ms: now.wall_ms,
-            assignments: vec![assignment],
-        };
         self.actions.push(Action::Record(Event::Intent(intent)));
         self.actions.push(Action::Order(cpu, Order::Slice(order)));
         true
