@@ -3,9 +3,10 @@
 //! Eight chains; step i multiplies every chain by the i-th multiplier m (odd): xⱼ ← low(xⱼ·m). That is a bijection, so a wrong
 //! low half stays in its chain, and in everything the chain brings forth. The high halves hⱼ go into two sums for each chain:
 //! aⱼ ← aⱼ + hⱼ, sⱼ ← sⱼ + aⱼ mod 2⁶⁴; before every fourth step, from the first on, the halves of aⱼ are exchanged. All these
-//! are bijections too, so one wrong high half always shows; two that differ by the same 2ᵏ, with either sign, cancel in a but
-//! leave s wrong by their distance times 2ᵏ. That is 0 mod 2⁶⁴ only for flips of bit 63 two steps apart within the same four;
-//! further apart the exchange has moved the difference down (k = 63 to 31), and only a row of opposite carries could hide it.
+//! are bijections too, so one wrong high half always shows. Two that are wrong by the same 2ᵏ, with either sign, may cancel in a
+//! but leave s wrong by their distance times 2ᵏ. Without the exchange that is 0 mod 2⁶⁴ too often for the top bits: bit 63 at any
+//! even distance, one pair in 85 over all bits. With it, within the same four steps only bit 63 of steps two apart can pass;
+//! further apart it takes differences that wrap around in just the right places (a test counts less than one pair in 2,000).
 //!
 //! Any instruction of the integer ALUs, even one for each product, takes issue slots from the multiplier. So the loop has none:
 //! high halves are stored, sixteen steps later the vector unit sums the row up, and the next one is written in its place.
@@ -172,4 +173,52 @@ fn avx2(multipliers: &[u64], mut x: [u64; CHAINS]) -> Output {
 fn run_avx2(multipliers: &[u64], x: [u64; CHAINS]) -> Output {
     // SAFETY: chosen only in `prepare`, for a `Proof` of `Avx2`, which `isa` makes only when avx2 and bmi2 are present
     unsafe { avx2(multipliers, x) }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn sums(rows: &[[u64; CHAINS]]) -> [[u64; CHAINS]; 2] {
+        let (mut a, mut s) = ([0; CHAINS], [0; CHAINS]);
+        rows.iter().enumerate().for_each(|(step, row)| sum(step, row, &mut a, &mut s));
+        [a, s]
+    }
+
+    /// All pairs of the same bit in two of 128 steps, in every chain.
+    #[test]
+    fn a_flip_shows_alone_and_so_does_almost_every_pair_of_the_same_flip() {
+        const LONG: usize = 128;
+        let rows: Vec<[u64; CHAINS]> = (1..=LONG as u64)
+            .map(|i| std::array::from_fn(|j| i.wrapping_mul(0x9e37_79b9_7f4a_7c15).rotate_left(7 * j as u32)))
+            .collect();
+        let right = sums(&rows);
+        let (mut pairs, mut passed) = (0, 0);
+        for bit in 0..64 {
+            for i in 0..LONG {
+                let mut bad = rows.clone();
+                bad[i].iter_mut().for_each(|h| *h ^= 1 << bit);
+                let wrong = sums(&bad);
+                assert!(
+                    (0..CHAINS).all(|c| (wrong[0][c], wrong[1][c]) != (right[0][c], right[1][c])),
+                    "bit {bit} of step {i}"
+                );
+                for j in i + 1..LONG {
+                    bad[j].iter_mut().for_each(|h| *h ^= 1 << bit);
+                    let wrong = sums(&bad);
+                    bad[j] = rows[j];
+                    let hidden =
+                        (0..CHAINS).filter(|&c| (wrong[0][c], wrong[1][c]) == (right[0][c], right[1][c])).count();
+                    if i / EXCHANGE == j / EXCHANGE {
+                        let passes = bit == 63 && j == i + 2;
+                        assert_eq!(hidden, if passes { CHAINS } else { 0 }, "bit {bit} of steps {i} and {j}");
+                    }
+                    pairs += CHAINS;
+                    passed += hidden;
+                }
+            }
+        }
+        // sums of sums without the exchange let one in 85 pass
+        assert!(passed * 2000 < pairs, "{passed} of {pairs} pairs pass");
+    }
 }
