@@ -25,7 +25,8 @@ pub fn words(case: &Case) -> Vec<u64> {
             let (low, high) = product(chains[j], m);
             chains[j] = low;
             if step % 4 == 0 {
-                sums[j] = sums[j] << 32 | sums[j] >> 32;
+                let (upper, lower) = (sums[j] >> 32, sums[j] & 0xffff_ffff);
+                sums[j] = lower << 32 | upper;
             }
             sums[j] = sums[j].wrapping_add(high);
             sums_of_sums[j] = sums_of_sums[j].wrapping_add(sums[j]);
