@@ -136,10 +136,11 @@ struct Plan {
 }
 
 impl Plan {
-    /// Byte offset in the buffer of payload `r` after `round` rounds.
+    /// Byte offset in the buffer of payload `r` after `round` rounds. The number of payloads divides that of places, so the quotient
+    /// is exact and the same for every hop.
     #[inline(always)]
     fn at(&self, r: usize, round: usize) -> usize {
-        let (side, offset) = place(r * PATH / self.payloads + round);
+        let (side, offset) = place(r * (PATH / self.payloads) + round);
         (side * self.payloads + r) * SLOT + offset
     }
 }
