@@ -77,6 +77,8 @@ pub struct Provenance {
     pub reference: Source,
     /// Python file and the SHA-256 of its source.
     pub witness: Source,
+    /// The `common_*` files of the family that both may lean on, reference's first, each side by name.
+    pub shared: Vec<Source>,
     /// Libraries that the witness leans on, with versions.
     pub libraries: String,
 }

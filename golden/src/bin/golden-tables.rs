@@ -102,14 +102,31 @@ fn source(file: String) -> std::io::Result<Source> {
     Ok(Source { file, sha256: sha256_hex(&bytes) })
 }
 
+/// The files of a family's folder that its kernels share.
+fn shared(folder: &str) -> std::io::Result<Vec<Source>> {
+    let mut names = Vec::new();
+    for entry in std::fs::read_dir(Path::new("golden").join(folder))? {
+        let name = entry?.file_name().to_string_lossy().into_owned();
+        if name.starts_with("common_") {
+            names.push(format!("{folder}/{name}"));
+        }
+    }
+    names.sort();
+    names.into_iter().map(source).collect()
+}
+
 fn write(id: &str, outputs: &Outputs, libraries: String) -> std::io::Result<()> {
     let stem = id.replace('.', "/");
+    let family = id.split('.').next().unwrap_or(id);
+    let mut both = shared(&format!("src/reference/{family}"))?;
+    both.extend(shared(&format!("witness/{family}"))?);
     let table = Table {
         schema: "proofhouse/golden/1".into(),
         kernel: id.into(),
         provenance: Provenance {
             reference: source(format!("src/reference/{stem}.rs"))?,
             witness: source(format!("witness/{stem}.py"))?,
+            shared: both,
             libraries,
         },
         cases: outputs.iter().map(|(&(size, seed), words)| Row { seed, size, words: format_words(words) }).collect(),

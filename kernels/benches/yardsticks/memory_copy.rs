@@ -18,7 +18,6 @@ pub fn yardsticks() -> Vec<Yardstick> {
     #[target_feature(enable = "avx2")]
     fn copy(from: &[u8], to: &mut [u8]) {
         for (a, b) in from.as_chunks::<32>().0.iter().zip(to.as_chunks_mut::<32>().0) {
-            // a plain load and store would be made a call of the platform's copy
             // a plain load would let the compiler make the loop a call of the platform's copy
             // SAFETY: both chunks are 32 bytes
             unsafe { _mm256_storeu_si256(b.as_mut_ptr().cast(), _mm256_lddqu_si256(a.as_ptr().cast())) }

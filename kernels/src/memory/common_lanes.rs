@@ -26,6 +26,10 @@ pub trait Lanes: Copy {
     /// `to` must be writable for 64 bytes.
     unsafe fn store(self, v: Self::V, to: *mut u8);
 
+    /// Calls for the line at this address, which may be any: it is not touched. Nothing where the instruction set has no such hint.
+    #[inline(always)]
+    fn prefetch(self, _from: *const u8) {}
+
     /// Loads a whole line.
     #[inline(always)]
     fn read(self, line: &Line) -> Self::V {

@@ -47,6 +47,12 @@ impl Lanes for Avx2 {
     }
 
     #[inline(always)]
+    fn prefetch(self, from: *const u8) {
+        // SAFETY: SSE is part of the x86-64 baseline; a prefetch of any address is without effect on the program
+        unsafe { _mm_prefetch::<_MM_HINT_T0>(from.cast()) }
+    }
+
+    #[inline(always)]
     unsafe fn load(self, from: *const u8) -> [__m256i; 2] {
         // SAFETY: the caller gives 64 readable bytes; the caller of `Avx2::new` proved avx2
         unsafe { [_mm256_loadu_si256(from.cast()), _mm256_loadu_si256(from.add(32).cast())] }
@@ -102,6 +108,12 @@ impl Lanes for Avx512 {
     fn fold(self, a: __m512i) -> __m512i {
         // SAFETY: the caller of `Avx512::new` proved avx512f
         unsafe { _mm512_xor_si512(a, _mm512_srli_epi64::<32>(a)) }
+    }
+
+    #[inline(always)]
+    fn prefetch(self, from: *const u8) {
+        // SAFETY: SSE is part of the x86-64 baseline; a prefetch of any address is without effect on the program
+        unsafe { _mm_prefetch::<_MM_HINT_T0>(from.cast()) }
     }
 
     #[inline(always)]

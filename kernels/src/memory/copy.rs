@@ -29,6 +29,9 @@ use crate::operands::Operands;
 
 /// Lines of one payload.
 const LINES: usize = 190;
+const _: () = assert!(LINES.is_multiple_of(2), "moved in pairs");
+/// Bytes by which a line is called for before it is moved.
+const AHEAD: isize = 16 * 64;
 /// Bytes of one slot: a payload at any offset below 64, and a line between neighbours.
 const SLOT: usize = 12_288;
 /// Places of the closed path.
@@ -133,10 +136,11 @@ struct Plan {
 }
 
 impl Plan {
-    /// Byte offset in the buffer of payload `r` after `round` rounds.
+    /// Byte offset in the buffer of payload `r` after `round` rounds. The number of payloads divides that of places, so the quotient
+    /// is exact and the same for every hop.
     #[inline(always)]
     fn at(&self, r: usize, round: usize) -> usize {
-        let (side, offset) = place(r * PATH / self.payloads + round);
+        let (side, offset) = place(r * (PATH / self.payloads) + round);
         (side * self.payloads + r) * SLOT + offset
     }
 }
@@ -161,7 +165,9 @@ fn hop<L: Lanes>(l: L, bytes: &mut [u8], from: usize, to: usize, digest: &mut Di
     const BYTES: usize = LINES * 64;
     assert!(from.max(to) + BYTES <= bytes.len());
     let base = bytes.as_mut_ptr();
-    let mut one = |at: usize| {
+    let mut one = |at: usize, ahead: isize| {
+        // the digest's work on a line fills the core's queues while the line is awaited, unless it was called for before
+        l.prefetch(base.wrapping_add(from + at).wrapping_offset(ahead));
         // SAFETY: `at` ≤ BYTES − 64 and both payloads end within `bytes`, as asserted above
         unsafe {
             let v = l.load(base.add(from + at));
@@ -169,10 +175,17 @@ fn hop<L: Lanes>(l: L, bytes: &mut [u8], from: usize, to: usize, digest: &mut Di
             digest.push(v);
         }
     };
+    // two lines a turn: half the loop's own instructions
     if from < to && to < from + BYTES {
-        (0..LINES).rev().for_each(|i| one(64 * i));
+        for pair in (0..LINES / 2).rev() {
+            one(128 * pair + 64, -AHEAD);
+            one(128 * pair, -AHEAD);
+        }
     } else {
-        (0..LINES).for_each(|i| one(64 * i));
+        for pair in 0..LINES / 2 {
+            one(128 * pair, AHEAD);
+            one(128 * pair + 64, AHEAD);
+        }
     }
 }
 

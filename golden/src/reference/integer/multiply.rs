@@ -14,18 +14,25 @@ fn product(a: u64, b: u64) -> (u64, u64) {
     (other << 32 | low & HALF, ah * bh + (middle >> 32) + (other >> 32))
 }
 
-/// The eight chains after 1,024 steps.
+/// The eight chains after 1,024 steps, then both sums of each chain's high halves.
 pub fn words(case: &Case) -> Vec<u64> {
     let mut stream = Stream::new(case);
     let mut chains = stream.words(8);
-    for _ in 0..1024 {
+    let (mut sums, mut sums_of_sums) = (vec![0u64; 8], vec![0u64; 8]);
+    for step in 0..1024 {
         let m = stream.word() | 1;
-        let products: Vec<(u64, u64)> = chains.iter().map(|&x| product(x, m)).collect();
-        for (j, x) in chains.iter_mut().enumerate() {
-            *x = products[j].0.wrapping_add(products[(j + 7) % 8].1);
+        for j in 0..8 {
+            let (low, high) = product(chains[j], m);
+            chains[j] = low;
+            if step % 4 == 0 {
+                let (upper, lower) = (sums[j] >> 32, sums[j] & 0xffff_ffff);
+                sums[j] = lower << 32 | upper;
+            }
+            sums[j] = sums[j].wrapping_add(high);
+            sums_of_sums[j] = sums_of_sums[j].wrapping_add(sums[j]);
         }
     }
-    chains
+    [chains, sums, sums_of_sums].concat()
 }
 
 #[cfg(test)]
