@@ -206,7 +206,7 @@ impl Director for Bench {
         if !self.bar.is_hidden() {
             let length = self.bar.length().unwrap_or(0) as f64;
             self.bar.set_position((progress * length) as u64);
-            let left = Duration::from_millis(length as u64).saturating_sub(at).as_secs();
+            let left = if progress > 0.0 { (at.as_secs_f64() * (1.0 - progress) / progress) as u64 } else { 0 };
             self.bar.set_message(format!("{}:{:02} left, {slices_left} slices to go", left / 60, left % 60));
         }
         Ok(Vec::new())

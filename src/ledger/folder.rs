@@ -123,8 +123,8 @@ pub fn read_limited(file: &Path, most: u64) -> io::Result<Option<Vec<u8>>> {
 }
 
 /// Takes the folder for one writer, and makes it a ledger if there is none yet.
-/// Returns the lock, which is held until the file is dropped, the marker, and whether it was made just now.
-pub fn take(path: &Path, wall_ms: u64) -> Result<(File, Marker, bool), Error> {
+/// Returns the lock, which is held until it is dropped, the marker, and whether it was made just now.
+pub fn take(path: &Path, wall_ms: u64) -> Result<(Lock, Marker, bool), Error> {
     match marker(path) {
         Ok(_) => {}
         Err(Error::NoLedger { .. }) => create_folders(path)?,
@@ -172,12 +172,23 @@ pub fn create_folders(path: &Path) -> Result<(), Error> {
     Ok(())
 }
 
-fn lock(path: &Path) -> Result<File, Error> {
+/// The writer's lock. Given back by name and not by closing: a process that is being started by another thread holds
+/// a copy of every descriptor for a moment.
+pub struct Lock(File);
+
+impl Drop for Lock {
+    fn drop(&mut self) {
+        // closing follows anyway
+        let _ = self.0.unlock();
+    }
+}
+
+fn lock(path: &Path) -> Result<Lock, Error> {
     let file = path.join(names::LOCK);
     let open = OpenOptions::new().create(true).truncate(false).write(true).open(&file);
     let open = open.map_err(|e| Error::io(&file, "open", e))?;
     match open.try_lock() {
-        Ok(()) => Ok(open),
+        Ok(()) => Ok(Lock(open)),
         Err(TryLockError::WouldBlock) => Err(Error::Locked { path: path.into() }),
         Err(TryLockError::Error(error)) => Err(Error::io(&file, "lock", error)),
     }

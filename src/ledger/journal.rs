@@ -63,7 +63,7 @@ pub struct Journal {
     prev: Digest,
     failed: Option<Error>,
     /// Held until the journal is dropped.
-    _lock: Option<File>,
+    _lock: Option<folder::Lock>,
 }
 
 impl Journal {

@@ -103,9 +103,11 @@ impl Supervisor {
         lanes.chain([end]).min().unwrap_or(end)
     }
 
-    /// Part of the job that is over, by time and by slices, whichever is further: for a progress bar.
+    /// Part of the job that is over, by time or by slices, whichever is further: for a progress bar.
     pub fn progress(&self, at: Duration) -> f64 {
-        (at.as_secs_f64() / self.setup.budget.as_secs_f64()).min(1.0)
+        let planned: usize = self.setup.tracks.iter().map(|t| t.slices.len()).sum();
+        let by_slices = 1.0 - self.slices_left() as f64 / planned.max(1) as f64;
+        by_slices.max(at.as_secs_f64() / self.setup.budget.as_secs_f64()).clamp(0.0, 1.0)
     }
 
     /// Slices that are still to come.

@@ -110,6 +110,25 @@ fn a_full_disk_ends_the_window_with_what_happened() {
 }
 
 #[test]
+fn a_read_only_file_system_is_named() {
+    let scratch = Scratch::new("read-only");
+    let place = scratch.path().display().to_string();
+    let mount = |args: &[&str]| std::process::Command::new("mount").args(args).status().is_ok_and(|s| s.success());
+    if !mount(&["-t", "tmpfs", "-o", "ro", "tmpfs", &place]) {
+        eprintln!("left out: this user may not mount a read-only file system");
+        return;
+    }
+    let ledger = scratch.ledger();
+    let result = std::panic::catch_unwind(|| {
+        refused(&["window", "--budget", "2s", "--ledger", &ledger], 3, &[&ledger, "read-only"]);
+    });
+    let _ = std::process::Command::new("umount").arg(&place).status();
+    if let Err(why) = result {
+        std::panic::resume_unwind(why);
+    }
+}
+
+#[test]
 fn cpus_outside_the_affinity_mask() {
     let cpus = super::running::cpus();
     let [first, .., last] = cpus.as_slice() else { return };
