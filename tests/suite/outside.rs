@@ -15,7 +15,7 @@ use rand_chacha::ChaCha12Rng;
 use rand_chacha::rand_core::{Rng, SeedableRng};
 use serde_json::Value;
 
-use super::running::{Scratch, alone, cpus, json, program, worker};
+use super::running::{Scratch, alone, cpus, json, program, worker, worker_within};
 
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 enum Target {
@@ -91,8 +91,8 @@ fn campaign(target: Target, flips: u64, seed: u64) -> (u64, u64) {
     std::thread::sleep(Duration::from_millis(900));
     for _ in 0..flips {
         std::thread::sleep(every.mul_f64(0.8 + 0.3 * (rng.next_u64() % 1000) as f64 / 1000.0));
-        // it may have been lost to the last flip and replaced
-        let pid = worker(&child, cpu);
+        // it may have been lost to the last flip and replaced; after too many losses the cpu is left alone
+        let Some(pid) = worker_within(&child, cpu, Duration::from_secs(3)) else { break };
         let made = ptrace::seize(pid, Options::empty()).and_then(|()| {
             ptrace::interrupt(pid)?;
             waitpid(pid, None)?;

@@ -65,20 +65,25 @@ pub fn alone() -> std::sync::MutexGuard<'static, ()> {
 
 /// The worker of `cpu` below the program `parent`, once it is there.
 pub fn worker(parent: &Child, cpu: u32) -> Pid {
+    worker_within(parent, cpu, Duration::from_secs(10)).unwrap_or_else(|| panic!("no worker of cpu {cpu} came up"))
+}
+
+/// The same, if it comes up within `patience`.
+pub fn worker_within(parent: &Child, cpu: u32, patience: Duration) -> Option<Pid> {
     let wanted = format!("worker\0--cpu\0{cpu}\0");
-    let patience = Instant::now() + Duration::from_secs(10);
+    let patience = Instant::now() + patience;
     while Instant::now() < patience {
         for entry in std::fs::read_dir("/proc").unwrap().flatten() {
             let Some(pid) = entry.file_name().to_str().and_then(|n| n.parse::<i32>().ok()) else { continue };
             let text = |file: &str| std::fs::read_to_string(entry.path().join(file)).unwrap_or_default();
             let parent_line = format!("PPid:\t{}\n", parent.id());
             if text("status").contains(&parent_line) && text("cmdline").ends_with(&wanted) {
-                return Pid::from_raw(pid);
+                return Some(Pid::from_raw(pid));
             }
         }
         std::thread::sleep(Duration::from_millis(5));
     }
-    panic!("no worker of cpu {cpu} came up");
+    None
 }
 
 fn window(scratch: &Scratch, budget: &str, more: &[&str]) -> Child {
