@@ -325,7 +325,10 @@ impl Open {
         let control = format!("{control_wrong} of {control_runs} on control cores");
         match confirmation {
             Confirmation::Repeated => {
-                format!("{what}; {again}, {control}; expected words recomputed on {equal} other cores")
+                format!(
+                    "{what}; {again}, {control}; expected words recomputed on {equal} other core{}",
+                    if equal == 1 { "" } else { "s" }
+                )
             }
             Confirmation::Once => format!("{what}; not wrong again in {suspect_runs} runs, {control}"),
             Confirmation::Shared => format!("{what}; {again}, and {control}: not this core's alone"),

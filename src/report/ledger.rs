@@ -5,7 +5,7 @@ use std::fmt::Write;
 use serde::Serialize;
 
 use super::figures::{Figures, short};
-use super::text::{Table, printable};
+use super::text::{Table, folded, printable};
 use crate::event::{Finding, Lost};
 use crate::host::Cpu;
 use crate::ledger::cells::LeftOut;
@@ -125,7 +125,7 @@ impl Shown {
         }
         out.push_str(&table.text());
         for f in &self.findings {
-            let _ = writeln!(out, "\nFinding: {}", printable(&f.statement));
+            let _ = writeln!(out, "\n{}", folded(&format!("Finding: {}", printable(&f.statement))));
         }
         for l in &self.lost {
             let _ = writeln!(
@@ -137,12 +137,12 @@ impl Shown {
             );
         }
         let l = &self.left_out;
-        let _ = writeln!(
-            out,
-            "\nLeft out of every sum: {} records of drills, {} slices for confirmation, {} void slices, {} records without an \
-             opening, {} of unknown kinds.",
+        let left = format!(
+            "Left out of every sum: {} records of drills, {} slices for confirmation, {} void slices, {} records without \
+             an opening, {} of unknown kinds.",
             l.drill, l.confirmation, l.void, l.no_opening, l.unknown
         );
+        let _ = writeln!(out, "\n{}", folded(&left));
         out
     }
 }

@@ -42,6 +42,14 @@ pub fn printable(text: &str) -> String {
     text.chars().map(|c| if c.is_control() { '\u{fffd}' } else { c }).collect()
 }
 
+/// Columns of a text report.
+const COLUMNS: usize = 100;
+
+/// Prose folded at spaces to the width of a report, later lines indented. Figures of a table stay as they are.
+pub fn folded(text: &str) -> String {
+    textwrap::fill(text, textwrap::Options::new(COLUMNS).subsequent_indent("  ").break_words(false))
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -52,6 +60,8 @@ mod tests {
         table.row(["0".into(), "clear".into()]);
         table.row(["128".into(), "watch".into()]);
         assert_eq!(table.text(), "cpu  verdict\n  0  clear\n128  watch\n");
+        let long = folded(&"seventeen letters ".repeat(12));
+        assert!(long.lines().count() == 3 && long.lines().all(|l| l.chars().count() <= 100), "{long}");
         assert_eq!(printable("a\x1b[2Jb"), "a\u{fffd}[2Jb");
     }
 }

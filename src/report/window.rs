@@ -6,7 +6,7 @@ use std::fmt::Write;
 use serde::Serialize;
 
 use super::figures::{Figures, short};
-use super::text::Table;
+use super::text::{Table, folded, printable};
 use crate::event::{Confirmation, Ending, Event, Finding, Lost, Opened, Purpose};
 use crate::host::Cpu;
 use crate::judge::verdict::{self, Known, Verdict};
@@ -300,9 +300,10 @@ impl WindowReport {
             (1, _) => "Every kernel, variant and size was planned once a cpu".to_owned(),
             (n, _) => format!("Every kernel, variant and size was planned {n} times a cpu"),
         };
-        let _ = writeln!(out, "{coverage}; seed {}, job {} in {}", self.seed, self.job_id, self.ledger);
+        let origin = format!("{coverage}; seed {}, job {} in {}", self.seed, self.job_id, printable(&self.ledger));
+        let _ = writeln!(out, "{}", folded(&origin));
         if self.virtualised {
-            let _ = writeln!(out, "{VIRTUAL}");
+            let _ = writeln!(out, "{}", folded(VIRTUAL));
         }
         let _ = writeln!(out);
         let mut table =
@@ -336,11 +337,12 @@ impl WindowReport {
         for c in &self.cores {
             let _ = writeln!(out, "\ncpu {}: {}", c.cpu, c.statement);
             if c.verdict != Verdict::Clear {
-                let _ = writeln!(out, "  because {}\n  next: {}", c.because, c.next);
+                let _ = writeln!(out, "{}", folded(&format!("  because {}", c.because)));
+                let _ = writeln!(out, "{}", folded(&format!("  next: {}", c.next)));
             }
         }
         for f in &self.findings {
-            let _ = writeln!(out, "\nFinding: {}", f.statement);
+            let _ = writeln!(out, "\n{}", folded(&format!("Finding: {}", f.statement)));
             if let (Some(seed), Some(w)) = (f.seed, &f.first) {
                 let _ = writeln!(
                     out,
@@ -349,14 +351,16 @@ impl WindowReport {
                 );
             }
             for line in f.counters.iter().chain(&f.lacking) {
-                let _ = writeln!(out, "  {line}");
+                let _ = writeln!(out, "{}", folded(&format!("  {line}")));
             }
         }
         for l in &self.lost {
-            let _ = writeln!(out, "\nLost: the worker of cpu {} in {} {}: {}", l.cpu, l.kernel, l.variant, l.how);
+            let text =
+                format!("Lost: the worker of cpu {} in {} {}: {}", l.cpu, l.kernel, l.variant, printable(&l.how));
+            let _ = writeln!(out, "\n{}", folded(&text));
         }
         for remark in &self.remarks {
-            let _ = writeln!(out, "\nRemark: {remark}");
+            let _ = writeln!(out, "\n{}", folded(&format!("Remark: {}", printable(remark))));
         }
         if !self.skipped.is_empty() {
             let _ = writeln!(out, "\n{} variants cannot run here; `proofhouse survey` says why.", self.skipped.len());
