@@ -16,7 +16,7 @@ fn throughput(unit: &str, amount: u64) -> Throughput {
 
 fn kernels(criterion: &mut Criterion) {
     let mut bare = yardsticks::all();
-    for &kernel in catalogue::KERNELS {
+    for &kernel in catalogue::KERNELS.iter().filter(|k| k.cpus() == 1) {
         let mut group = criterion.benchmark_group(kernel.id());
         for (variant, proof) in isa::survey(kernel) {
             let Ok(proof) = proof else { continue };

@@ -28,10 +28,25 @@ pub enum Feature {
     Avx512bw,
     Avx512dq,
     Avx512vl,
+    Lzcnt,
+    Movbe,
+    Gfni,
+    Avx512cd,
+    Avx512vnni,
+    Avx512bf16,
+    Avx512ifma,
+    Avx512vbmi,
+    Avx512vbmi2,
+    Avx512bitalg,
+    Avx512vpopcntdq,
+    Avx512fp16,
     Neon,
     ArmAes,
     ArmSha2,
     ArmCrc,
+    ArmFp16,
+    ArmDotprod,
+    ArmLse,
 }
 
 impl Feature {
@@ -58,10 +73,25 @@ impl Feature {
             Feature::Avx512bw => "avx512bw",
             Feature::Avx512dq => "avx512dq",
             Feature::Avx512vl => "avx512vl",
+            Feature::Lzcnt => "lzcnt",
+            Feature::Movbe => "movbe",
+            Feature::Gfni => "gfni",
+            Feature::Avx512cd => "avx512cd",
+            Feature::Avx512vnni => "avx512vnni",
+            Feature::Avx512bf16 => "avx512bf16",
+            Feature::Avx512ifma => "avx512ifma",
+            Feature::Avx512vbmi => "avx512vbmi",
+            Feature::Avx512vbmi2 => "avx512vbmi2",
+            Feature::Avx512bitalg => "avx512bitalg",
+            Feature::Avx512vpopcntdq => "avx512vpopcntdq",
+            Feature::Avx512fp16 => "avx512fp16",
             Feature::Neon => "neon",
             Feature::ArmAes => "aes",
             Feature::ArmSha2 => "sha2",
             Feature::ArmCrc => "crc",
+            Feature::ArmFp16 => "fp16",
+            Feature::ArmDotprod => "dotprod",
+            Feature::ArmLse => "lse",
         }
     }
 
@@ -90,7 +120,25 @@ impl Feature {
             Feature::Avx512bw => has!("avx512bw"),
             Feature::Avx512dq => has!("avx512dq"),
             Feature::Avx512vl => has!("avx512vl"),
-            Feature::Neon | Feature::ArmAes | Feature::ArmSha2 | Feature::ArmCrc => false,
+            Feature::Lzcnt => has!("lzcnt"),
+            Feature::Movbe => has!("movbe"),
+            Feature::Gfni => has!("gfni"),
+            Feature::Avx512cd => has!("avx512cd"),
+            Feature::Avx512vnni => has!("avx512vnni"),
+            Feature::Avx512bf16 => has!("avx512bf16"),
+            Feature::Avx512ifma => has!("avx512ifma"),
+            Feature::Avx512vbmi => has!("avx512vbmi"),
+            Feature::Avx512vbmi2 => has!("avx512vbmi2"),
+            Feature::Avx512bitalg => has!("avx512bitalg"),
+            Feature::Avx512vpopcntdq => has!("avx512vpopcntdq"),
+            Feature::Avx512fp16 => has!("avx512fp16"),
+            Feature::Neon
+            | Feature::ArmAes
+            | Feature::ArmSha2
+            | Feature::ArmCrc
+            | Feature::ArmFp16
+            | Feature::ArmDotprod
+            | Feature::ArmLse => false,
         }
     }
 
@@ -103,6 +151,9 @@ impl Feature {
             Feature::ArmAes => has!("aes"),
             Feature::ArmSha2 => has!("sha2"),
             Feature::ArmCrc => has!("crc"),
+            Feature::ArmFp16 => has!("fp16"),
+            Feature::ArmDotprod => has!("dotprod"),
+            Feature::ArmLse => has!("lse"),
             _ => false,
         }
     }

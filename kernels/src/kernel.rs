@@ -125,7 +125,12 @@ pub trait Kernel: Sync {
     ///
     /// # Panics
     /// When `proof` or `case` is for another kernel, or the size is not one of [`Kernel::sizes`]: a programming error.
-    fn prepare(&self, case: &Case, proof: Proof) -> Box<dyn Ready>;
+    fn prepare(&self, case: &Case, proof: Proof) -> Roles;
+
+    /// Cpus that one run takes: 1, or 2 for a kernel about what passes between cores.
+    fn cpus(&self) -> usize {
+        1
+    }
 
     /// The part of the id before the point.
     fn family(&self) -> &'static str {
@@ -138,6 +143,45 @@ pub const MAX_OUTPUT_WORDS: usize = 256;
 
 /// Operands in memory, ready to be run any number of times with the same output.
 pub trait Ready: Send {
-    /// One run: overwrites every word of `out`, whose length is [`Kernel::output_words`].
+    /// One run: overwrites every word of `out`, whose length is [`Kernel::output_words`] for a kernel of one cpu and
+    /// half of that for each role of a pair.
     fn run(&mut self, out: &mut [u64]);
+}
+
+/// What [`Kernel::prepare`] hands out, by the number of cpus that a run takes.
+pub enum Roles {
+    /// One cpu does the run.
+    One(Box<dyn Ready>),
+    /// Two cpus do the run together. Each role is called once a run, on its own thread, both at the same time; a role
+    /// may spin until the other has begun. The first role writes the first half of the output words, the second the
+    /// rest. Run n of both has to have returned before either begins run n + 1.
+    Two([Box<dyn Ready>; 2]),
+}
+
+impl Roles {
+    /// The only role of a kernel for one cpu.
+    ///
+    /// # Panics
+    /// When the kernel takes two cpus ([`Kernel::cpus`]): a programming error.
+    pub fn alone(self) -> Box<dyn Ready> {
+        match self {
+            Roles::One(ready) => ready,
+            Roles::Two(_) => panic!("a kernel for two cpus was asked to run on one"),
+        }
+    }
+
+    /// One run of every role, on a thread of its own where there are two: for tests and rechecks, where it does not
+    /// matter which cpu does what. `out` is as long as [`Kernel::output_words`].
+    pub fn run_anywhere(&mut self, out: &mut [u64]) {
+        match self {
+            Roles::One(ready) => ready.run(out),
+            Roles::Two([first, second]) => {
+                let (low, high) = out.split_at_mut(out.len() / 2);
+                std::thread::scope(|s| {
+                    s.spawn(|| second.run(high));
+                    first.run(low);
+                });
+            }
+        }
+    }
 }

@@ -4,6 +4,7 @@ pub mod aligned;
 mod blocks;
 pub mod cache;
 pub mod catalogue;
+pub mod checksum;
 pub mod cipher;
 pub mod compare;
 pub mod float;
@@ -14,6 +15,8 @@ pub mod kernel;
 pub mod lanes;
 pub mod memory;
 pub mod operands;
+pub mod string;
+pub mod sync;
 pub mod vector;
 
-pub use kernel::{Build, Case, Kernel, Proven, Ready, Seed, Size, Variant, Work};
+pub use kernel::{Build, Case, Kernel, Proven, Ready, Roles, Seed, Size, Variant, Work};

@@ -180,7 +180,7 @@ impl<'a> Bench<'a> {
         armed: &mut [Armed],
     ) -> io::Result<(CaseReport, Duration)> {
         let case = Case { kernel: self.kernel.id(), seed: Seed(dwell.seed), size: Size(self.order.size) };
-        let mut ready = self.kernel.prepare(&case, self.proof);
+        let mut ready = self.kernel.prepare(&case, self.proof).alone();
         let mut output = vec![0u64; dwell.expected.len()];
         let mut report = CaseReport { seed: dwell.seed, runs: 0, wrong: 0, fold: 0 };
         let mut fold = Fold::default();

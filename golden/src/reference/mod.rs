@@ -3,11 +3,14 @@
 
 pub mod cache;
 pub mod chacha;
+pub mod checksum;
 pub mod cipher;
 pub mod float;
 pub mod fma;
 pub mod integer;
 pub mod memory;
+pub mod string;
+pub mod sync;
 pub mod vector;
 
 use kernels::Case;

@@ -21,7 +21,7 @@ use std::hint::black_box;
 
 use crate::aligned::{self, Line};
 use crate::isa::Proof;
-use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
+use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
 use crate::operands::Operands;
 
 /// Multiplier of the digests: ≡ 5 mod 8, so that its powers have the longest period.
@@ -74,7 +74,7 @@ impl Kernel for Walk {
         }
     }
 
-    fn prepare(&self, case: &Case, proof: Proof) -> Box<dyn Ready> {
+    fn prepare(&self, case: &Case, proof: Proof) -> Roles {
         assert_eq!(proof.variant_for(self.id()), Variant::Portable);
         let (_, laps, segments) = shape(case.size);
         let mut operands = Operands::new(case);
@@ -84,7 +84,7 @@ impl Kernel for Walk {
         let updates = std::array::from_fn(|_| operands.word());
         operands.finish(8 + 4 + 1 + 8);
         let plan = Plan { cycles, tags, step, updates, laps, segments };
-        Box::new(Footprint { lines: aligned::lines(case.size.0), plan })
+        Roles::One(Box::new(Footprint { lines: aligned::lines(case.size.0), plan }))
     }
 }
 
@@ -238,7 +238,7 @@ mod tests {
         let run = |seed| {
             let case = Case { kernel: Walk.id(), seed: Seed(seed), size: Size(16) };
             let mut out = vec![0; 256];
-            Walk.prepare(&case, isa::prove(&Walk, Variant::Portable).expect("portable")).run(&mut out);
+            Walk.prepare(&case, isa::prove(&Walk, Variant::Portable).expect("portable")).alone().run(&mut out);
             out
         };
         assert!(run(1).iter().zip(run(2)).all(|(a, b)| *a != b));

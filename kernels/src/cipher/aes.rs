@@ -11,7 +11,7 @@
 use super::common_aes::{Block, Job, Way, chains};
 use super::common_aes_soft::Soft;
 use crate::isa::Proof;
-use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
+use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
 use crate::operands::Operands;
 
 const CHAINS: usize = 24;
@@ -79,7 +79,7 @@ impl Kernel for Aes {
         }
     }
 
-    fn prepare(&self, case: &Case, proof: Proof) -> Box<dyn Ready> {
+    fn prepare(&self, case: &Case, proof: Proof) -> Roles {
         let mut operands = Operands::new(case);
         let jobs = SECTIONS
             .iter()
@@ -91,7 +91,7 @@ impl Kernel for Aes {
             })
             .collect();
         operands.finish(SECTIONS.iter().map(|(_, key)| key + 2 * (CHAINS + STEPS)).sum());
-        Box::new(Sections { jobs, run: runner(proof.variant_for(self.id())) })
+        Roles::One(Box::new(Sections { jobs, run: runner(proof.variant_for(self.id())) }))
     }
 }
 

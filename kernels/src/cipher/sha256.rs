@@ -11,7 +11,7 @@ use super::common_sha_arm;
 #[cfg(target_arch = "x86_64")]
 use super::common_sha_x86;
 use crate::isa::Proof;
-use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
+use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
 use crate::operands::Operands;
 
 const MESSAGES: usize = 8;
@@ -93,7 +93,7 @@ impl Kernel for Sha256 {
         }
     }
 
-    fn prepare(&self, case: &Case, proof: Proof) -> Box<dyn Ready> {
+    fn prepare(&self, case: &Case, proof: Proof) -> Roles {
         let mut operands = Operands::new(case);
         let messages = (0..MESSAGES)
             .map(|_| {
@@ -102,7 +102,7 @@ impl Kernel for Sha256 {
             })
             .collect();
         operands.finish(MESSAGES * WORDS);
-        Box::new(Messages { messages, run: runner(proof.variant_for(self.id())) })
+        Roles::One(Box::new(Messages { messages, run: runner(proof.variant_for(self.id())) }))
     }
 }
 

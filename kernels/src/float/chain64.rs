@@ -6,7 +6,7 @@
 
 use super::common_chain::{Chains, DOUBLE, Operand, ROWS, walk, words_drawn};
 use crate::isa::Proof;
-use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
+use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
 use crate::operands::Operands;
 
 const CHAINS: usize = 64;
@@ -80,7 +80,7 @@ impl Kernel for Chain64 {
         }
     }
 
-    fn prepare(&self, case: &Case, proof: Proof) -> Box<dyn Ready> {
+    fn prepare(&self, case: &Case, proof: Proof) -> Roles {
         let mut operands = Operands::new(case);
         let chains = Chains::draw(DOUBLE, case.seed.0 & 1 == 1, &mut operands, f64::from_bits);
         operands.finish(words_drawn(CHAINS));
@@ -93,7 +93,7 @@ impl Kernel for Chain64 {
             Variant::Neon => neon,
             _ => portable,
         };
-        Box::new(Prepared { chains, run })
+        Roles::One(Box::new(Prepared { chains, run }))
     }
 }
 

@@ -11,7 +11,7 @@
 
 use super::common_boundary::{BFLOAT, DOUBLE, HALF, SINGLE, any, from_integer, narrowing, to_integer};
 use crate::isa::Proof;
-use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
+use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
 use crate::lanes::Convert;
 use crate::lanes::convert::{BLOCK, Plain};
 use crate::operands::Operands;
@@ -118,7 +118,7 @@ impl Kernel for Conversions {
         }
     }
 
-    fn prepare(&self, case: &Case, proof: Proof) -> Box<dyn Ready> {
+    fn prepare(&self, case: &Case, proof: Proof) -> Roles {
         let mut operands = Operands::new(case);
         let arrays = Arrays::draw(&mut operands);
         operands.finish(2 * ITEMS * ARRAYS);
@@ -131,7 +131,7 @@ impl Kernel for Conversions {
             Variant::Neon => neon,
             _ => portable,
         };
-        Box::new(Prepared { arrays, run })
+        Roles::One(Box::new(Prepared { arrays, run }))
     }
 }
 

@@ -29,7 +29,7 @@
 use super::common_chain::{Chains, DOUBLE, Operand, ROWS, walk, words_drawn};
 use super::common_pair::{Fused, ProductError, Split, pow};
 use crate::isa::Proof;
-use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
+use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
 use crate::lanes::Arithmetic;
 use crate::operands::Operands;
 
@@ -114,7 +114,7 @@ impl Kernel for PowCast {
         }
     }
 
-    fn prepare(&self, case: &Case, proof: Proof) -> Box<dyn Ready> {
+    fn prepare(&self, case: &Case, proof: Proof) -> Roles {
         let mut operands = Operands::new(case);
         let chains = Chains::draw(DOUBLE, false, &mut operands, f64::from_bits);
         let mut powers = PUBLISHED.map(|y| (f64::from_bits(BASE), y)).to_vec();
@@ -132,7 +132,7 @@ impl Kernel for PowCast {
             Variant::Neon => neon,
             _ => portable,
         };
-        Box::new(Prepared { chains, powers, run })
+        Roles::One(Box::new(Prepared { chains, powers, run }))
     }
 }
 

@@ -7,7 +7,7 @@
 use super::common_operands::BINARY32;
 use super::common_walk::{ACCUMULATORS, FOOTPRINT_KIB, OUTPUT_ROWS, ROWS, Row, STEPS, Table, walk};
 use crate::isa::{Feature, Proof};
-use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
+use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
 use crate::operands::Operands;
 
 const LANES: usize = 16;
@@ -67,7 +67,7 @@ impl Kernel for Chain32 {
         }
     }
 
-    fn prepare(&self, case: &Case, proof: Proof) -> Box<dyn Ready> {
+    fn prepare(&self, case: &Case, proof: Proof) -> Roles {
         let run: unsafe fn(&Table<f32, LANES>, &mut Out) = match proof.variant_for(self.id()) {
             #[cfg(target_arch = "x86_64")]
             Variant::Avx2 => avx2,
@@ -79,7 +79,7 @@ impl Kernel for Chain32 {
             Variant::Portable => portable,
             other => unreachable!("no proof is made for {other}, which is not among the builds"),
         };
-        Box::new(Chains { table: table(case), run })
+        Roles::One(Box::new(Chains { table: table(case), run }))
     }
 }
 

@@ -19,7 +19,7 @@
 //! then one word with the first pair's carry in bit 0 and the second's in bit 1.
 
 use crate::isa::Proof;
-use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
+use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
 use crate::operands::Operands;
 
 const LIMBS: usize = 16;
@@ -78,7 +78,7 @@ impl Kernel for Carry {
         }
     }
 
-    fn prepare(&self, case: &Case, proof: Proof) -> Box<dyn Ready> {
+    fn prepare(&self, case: &Case, proof: Proof) -> Roles {
         let mut operands = Operands::new(case);
         let mut number = || std::array::from_fn(|_| operands.word());
         let start = [number(), number(), number(), number()];
@@ -89,7 +89,7 @@ impl Kernel for Carry {
             Variant::Avx2 => run_avx2,
             _ => portable,
         };
-        Box::new(Numbers { start, steps, run })
+        Roles::One(Box::new(Numbers { start, steps, run }))
     }
 }
 

@@ -21,7 +21,7 @@
 use std::num::{NonZeroU32, NonZeroU64};
 
 use crate::isa::Proof;
-use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
+use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
 use crate::operands::Operands;
 
 const CHAINS: usize = 4;
@@ -73,7 +73,7 @@ impl Kernel for Divide {
         }
     }
 
-    fn prepare(&self, case: &Case, proof: Proof) -> Box<dyn Ready> {
+    fn prepare(&self, case: &Case, proof: Proof) -> Roles {
         let mut operands = Operands::new(case);
         let start = std::array::from_fn(|_| operands.word());
         let steps = (0..STEPS).map(|_| Step::draw(&mut operands)).collect();
@@ -83,7 +83,7 @@ impl Kernel for Divide {
             Variant::Avx2 => run_avx2,
             _ => portable,
         };
-        Box::new(Chains { start, steps, run })
+        Roles::One(Box::new(Chains { start, steps, run }))
     }
 }
 

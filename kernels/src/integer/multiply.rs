@@ -15,7 +15,7 @@
 //! a, the 8 sums s.
 
 use crate::isa::Proof;
-use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
+use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
 use crate::operands::Operands;
 
 const CHAINS: usize = 8;
@@ -70,7 +70,7 @@ impl Kernel for Multiply {
         }
     }
 
-    fn prepare(&self, case: &Case, proof: Proof) -> Box<dyn Ready> {
+    fn prepare(&self, case: &Case, proof: Proof) -> Roles {
         let mut operands = Operands::new(case);
         let start = std::array::from_fn(|_| operands.word());
         let multipliers = operands.words(STEPS).into_iter().map(|m| m | 1).collect();
@@ -80,7 +80,7 @@ impl Kernel for Multiply {
             Variant::Avx2 => run_avx2,
             _ => portable,
         };
-        Box::new(Chains { start, multipliers, run })
+        Roles::One(Box::new(Chains { start, multipliers, run }))
     }
 }
 

@@ -24,7 +24,7 @@ use super::common_digest::Digest;
 use super::common_lanes::{Lanes, Words};
 use crate::aligned::{self, Line};
 use crate::isa::Proof;
-use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
+use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
 use crate::operands::Operands;
 
 /// Lines of one payload.
@@ -115,7 +115,7 @@ impl Kernel for Copy {
         }
     }
 
-    fn prepare(&self, case: &Case, proof: Proof) -> Box<dyn Ready> {
+    fn prepare(&self, case: &Case, proof: Proof) -> Roles {
         let (payloads, rounds) = shape(case.size);
         let mut operands = Operands::new(case);
         let mut eight = || std::array::from_fn(|_| operands.word());
@@ -123,7 +123,11 @@ impl Kernel for Copy {
         let step = operands.word() | 1;
         operands.finish(8 + 8 + 1);
         let plan = Plan { payloads, rounds, starts, first, step };
-        Box::new(Buffers { lines: aligned::lines(case.size.0), plan, run: runner(proof.variant_for(self.id())) })
+        Roles::One(Box::new(Buffers {
+            lines: aligned::lines(case.size.0),
+            plan,
+            run: runner(proof.variant_for(self.id())),
+        }))
     }
 }
 

@@ -21,7 +21,7 @@ use super::common_digest::Digest;
 use super::common_lanes::{Lanes, Words};
 use crate::aligned::{self, Line};
 use crate::isa::Proof;
-use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
+use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
 use crate::operands::Operands;
 
 /// One march element over all cells.
@@ -120,7 +120,7 @@ impl Kernel for March {
         }
     }
 
-    fn prepare(&self, case: &Case, proof: Proof) -> Box<dyn Ready> {
+    fn prepare(&self, case: &Case, proof: Proof) -> Roles {
         assert!(self.sizes().contains(&case.size), "size is not one of the kernel's");
         let mut operands = Operands::new(case);
         let mut eight = || std::array::from_fn(|_| operands.word());
@@ -134,7 +134,7 @@ impl Kernel for March {
             Background { start: seeded, step },
         ];
         let run = runner(proof.variant_for(self.id()));
-        Box::new(Cells { lines: aligned::lines(case.size.0), starts, backgrounds, run })
+        Roles::One(Box::new(Cells { lines: aligned::lines(case.size.0), starts, backgrounds, run }))
     }
 }
 

@@ -25,7 +25,7 @@
 
 use super::common_gather::{Lanes, OneByOne};
 use crate::isa::Proof;
-use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
+use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
 use crate::operands::Operands;
 
 const VECTORS: usize = 128;
@@ -81,7 +81,7 @@ impl Kernel for Gather {
         }
     }
 
-    fn prepare(&self, case: &Case, proof: Proof) -> Box<dyn Ready> {
+    fn prepare(&self, case: &Case, proof: Proof) -> Roles {
         let data = Data::draw(case);
         let run = match proof.variant_for(self.id()) {
             #[cfg(target_arch = "x86_64")]
@@ -90,7 +90,7 @@ impl Kernel for Gather {
             Variant::Avx512 => run_avx512,
             _ => portable,
         };
-        Box::new(Loads { data, run })
+        Roles::One(Box::new(Loads { data, run }))
     }
 }
 

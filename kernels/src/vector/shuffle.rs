@@ -28,7 +28,7 @@
 
 use crate::blocks::{Block, Blocks, Elements, portable::Bytes};
 use crate::isa::Proof;
-use crate::kernel::{Build, Case, Kernel, Proven, Ready, Size, Variant, Work};
+use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
 use crate::operands::Operands;
 
 const NETS: usize = 2;
@@ -115,7 +115,7 @@ impl Kernel for Shuffle {
         }
     }
 
-    fn prepare(&self, case: &Case, proof: Proof) -> Box<dyn Ready> {
+    fn prepare(&self, case: &Case, proof: Proof) -> Roles {
         let mut operands = Operands::new(case);
         let keys: [u8; NETS] = std::array::from_fn(|_| operands.word() as u8);
         let tags = keys.map(|key| std::array::from_fn(|k| Block(std::array::from_fn(|b| (32 * k + b) as u8 ^ key))));
@@ -132,7 +132,7 @@ impl Kernel for Shuffle {
             Variant::Neon => run_neon,
             _ => portable,
         };
-        Box::new(Nets { tags, sums, rounds, run })
+        Roles::One(Box::new(Nets { tags, sums, rounds, run }))
     }
 }
 

@@ -1,0 +1,1 @@
+//! References of the string family.

@@ -1,0 +1,1 @@
+//! Checksums: the CRC instruction, and CRC by carry-less multiplication.

@@ -1,0 +1,1 @@
+//! Byte moves: every alignment, every short length, overlaps, string instructions.
