@@ -87,6 +87,9 @@ pub struct Assignment {
     pub variant: String,
     /// Condition in words.
     pub condition: String,
+    /// The second cpu of a kernel for two.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub partner: Option<Cpu>,
 }
 
 /// The promise of work, on disk before the work starts.
@@ -189,6 +192,29 @@ pub struct Slice {
     /// Readings at the end of the slice.
     #[serde(default)]
     pub surroundings: Surroundings,
+    /// The second cpu of a kernel for two, and its processor time in nanoseconds.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub partner: Option<Partner>,
+    /// Where the unit's row of table seeds goes on after this slice.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub next_seed: Option<u64>,
+    /// Steps of a stepped pace, and how many of them began within 20 µs of their time.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub steps: Option<(u64, u64)>,
+    /// Machine-check, memory-error and throttling counters that rose meanwhile.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub counters: Vec<String>,
+}
+
+/// The second cpu of a slice.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize, Deserialize)]
+pub struct Partner {
+    /// Logical cpu.
+    pub cpu: Cpu,
+    /// Physical core.
+    pub core: u32,
+    /// Processor time inside the kernel.
+    pub busy_ns: u64,
 }
 
 /// One wrong word.
@@ -265,6 +291,9 @@ pub struct Mismatch {
     pub wrong_words: u64,
     /// The first words that differ.
     pub words: Vec<WrongWord>,
+    /// The second cpu of a kernel for two; output words from the middle on are its view.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub partner: Option<Cpu>,
     /// Kernel that ran on this core before, if any.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub previous_kernel: Option<String>,
@@ -342,6 +371,9 @@ pub struct Lost {
     pub wall_ms: u64,
     /// What became of it.
     pub how: How,
+    /// The second cpu of a kernel for two.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub partner: Option<Cpu>,
 }
 
 /// Runs and mismatches of one leg of a confirmation.
@@ -349,6 +381,9 @@ pub struct Lost {
 pub struct Leg {
     /// Where it ran.
     pub cpu: Cpu,
+    /// And with whom, for a kernel of two cpus.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub partner: Option<Cpu>,
     /// Runs.
     pub runs: u64,
     /// Wrong ones.
@@ -365,6 +400,8 @@ pub enum Confirmation {
     Once,
     /// Controls failed too: the fault is not this core's alone.
     Shared,
+    /// Two cores failed together and again so, and no control could tell which of them it was.
+    OneOfTwo,
     /// The recomputed words differ from the expected ones: the tool or its tables are wrong, not the core.
     Refuted,
     /// Steps were left out; `lacking` says which and why.
@@ -404,6 +441,9 @@ pub struct Finding {
     /// The first wrong word; absent where only the fold is known to be wrong.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub first: Option<WrongWord>,
+    /// The other cpu of a pair that failed together.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub partner: Option<Cpu>,
     /// Cpus on which the reference recomputed the expected words.
     pub recomputed_on: Vec<Cpu>,
     /// The suspect's legs in order.

@@ -1,6 +1,7 @@
 //! Finds CPU cores that compute wrongly, and says how rare their wrong answers are.
 
 pub mod cli;
+pub mod condition;
 pub mod error;
 pub mod event;
 pub mod exit_code;

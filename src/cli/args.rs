@@ -44,6 +44,9 @@ pub enum Command {
         /// The cpu to hold on to
         #[arg(long)]
         cpu: u32,
+        /// The memory node to take memory from
+        #[arg(long)]
+        node: Option<u32>,
     },
 }
 
@@ -118,7 +121,13 @@ pub struct WindowArgs {
     /// Seed of order and choice; drawn from the clock if left out
     #[arg(long)]
     pub seed: Option<u64>,
-    /// Stop when a sensor of a tested core reads more, in °C
+    /// Read the host's files below this folder instead of /, e.g. where a container sees them
+    #[arg(long, value_name = "FOLDER", default_value = "/")]
+    pub root: PathBuf,
+    /// Print what the window would do, and do nothing
+    #[arg(long)]
+    pub explain: bool,
+    /// Pause a cpu while its sensor reads more, in °C
     #[arg(long, value_name = "CELSIUS", value_parser = parse_celsius)]
     pub max_temp: Option<f64>,
     /// Confidence of intervals and bounds
@@ -156,6 +165,28 @@ pub enum LedgerCommand {
     Show(LedgerArgs),
     /// Check the hash chain from end to end
     Verify(LedgerArgs),
+    /// The grid of this host: what was covered when and for how long, and what is overdue
+    Coverage(CoverageArgs),
+}
+
+/// `ledger coverage`.
+#[derive(Clone, Debug, Args)]
+pub struct CoverageArgs {
+    /// Ledger
+    #[command(flatten)]
+    pub place: LedgerPlace,
+    /// Choice
+    #[command(flatten)]
+    pub choice: Choice,
+    /// A cell that was not covered for so long is overdue
+    #[arg(long, default_value = "30d", value_parser = parse_gap)]
+    pub overdue: Duration,
+    /// Windows are planned with this budget: it decides which conditions they have room for
+    #[arg(long, default_value = "10m", value_parser = parse_budget)]
+    pub budget: Duration,
+    /// Output
+    #[command(flatten)]
+    pub output: Output,
 }
 
 /// `ledger show`, `ledger verify`.

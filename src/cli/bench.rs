@@ -1,30 +1,26 @@
 //! The director of a job: keeps every event in the ledger, hands it to the judge and to the report, and turns what
 //! the judge wants into work. Here the layers meet.
 
+use std::collections::{BTreeMap, BTreeSet};
+use std::sync::Arc;
 use std::sync::mpsc::{Receiver, Sender, channel};
 use std::time::{Duration, Instant};
 
 use indicatif::{ProgressBar, ProgressDrawTarget, ProgressStyle};
-use kernels::Case;
+use kernels::{Case, Seed, Size};
 
+use super::live::Keeper;
+use super::rises::Rises;
 use super::sample::words_on;
-use crate::event::{Event, Purpose, Remark, Surroundings};
-use crate::host::{Counters, Cpu, Host, Root, Sensors};
+use crate::condition::{Arrangement, Setting};
+use crate::event::{Event, Mismatch, Purpose, Remark, Surroundings};
+use crate::host::{Counters, Cpu, Host, Root, Sensors, affinity};
 use crate::judge::confirm::{Confirmer, Counters as Watch, Want};
 use crate::ledger::Journal;
 use crate::run::checker::Seat;
 use crate::run::driver::{Director, unix_ms};
 use crate::run::fault::Fault;
-use crate::run::spec::{Request, Span, Spec, Truth};
-
-/// Golden words from the embedded tables.
-pub struct Tables;
-
-impl Truth for Tables {
-    fn expected(&self, case: &Case) -> Option<Vec<u64>> {
-        golden::table::expected(case).map(<[u64]>::to_vec)
-    }
-}
+use crate::run::spec::{Input, Request, Span, Spec};
 
 struct Watched {
     root: Root,
@@ -53,10 +49,14 @@ pub struct Bench {
     confirmer: Confirmer,
     sensors: Sensors,
     root: Root,
+    nodes: BTreeMap<Cpu, u32>,
     cpus: Vec<Cpu>,
+    live: Option<Arc<Keeper>>,
     hottest: Option<f64>,
-    stop: bool,
+    hot: BTreeSet<Cpu>,
+    gone: BTreeSet<Cpu>,
     looked: Instant,
+    rises: Rises,
     answers: (Sender<Answer>, Receiver<Answer>),
     bar: ProgressBar,
     announced: u64,
@@ -64,10 +64,20 @@ pub struct Bench {
     pub slices: u64,
 }
 
+/// Temperatures and the list of cpus are looked at so often.
+const WATCH_EVERY: Duration = Duration::from_millis(500);
+/// A cpu goes on when it is cooler than the limit by this much, in °C.
+const COOLED_BY: f64 = 5.0;
+
+fn several_nodes(host: &Host) -> bool {
+    let nodes: BTreeSet<u32> = host.topology.cpus.values().filter_map(|place| place.node.get()).collect();
+    nodes.len() > 1
+}
+
 type Answer = (usize, Cpu, Result<Vec<u64>, String>);
 
 impl Bench {
-    /// For one job. `all` may recompute, `tested` have workers; `hottest` in °C ends the job.
+    /// For one job. `tested` have workers; a cpu hotter than `hottest` °C pauses.
     pub fn new(
         host: &Host,
         journal: Journal,
@@ -75,6 +85,7 @@ impl Bench {
         job_id: u64,
         tested: &[Seat],
         hottest: Option<f64>,
+        live: Option<Arc<Keeper>>,
     ) -> Bench {
         Bench {
             journal,
@@ -84,10 +95,19 @@ impl Bench {
             confirmer,
             sensors: host.sensors.clone(),
             root: host.root.clone(),
+            // one node needs no asking for
+            nodes: if several_nodes(host) {
+                tested.iter().filter_map(|(cpu, _)| Some((*cpu, host.topology.cpus.get(cpu)?.node.get()?))).collect()
+            } else {
+                BTreeMap::new()
+            },
             cpus: tested.iter().map(|(cpu, _)| *cpu).collect(),
+            live,
             hottest,
-            stop: false,
+            hot: BTreeSet::new(),
+            gone: BTreeSet::new(),
             looked: Instant::now(),
+            rises: Rises::new(&host.root, &host.sensors),
             answers: channel(),
             bar: ProgressBar::hidden(),
             announced: 0,
@@ -130,11 +150,16 @@ impl Bench {
         Ok(())
     }
 
+    fn case_of(&self, m: &Mismatch) -> Option<Case> {
+        let kernel = kernels::catalogue::find(&m.kernel)?.id();
+        Some(Case { kernel, seed: Seed(m.seed?), size: Size(m.size) })
+    }
+
     fn work(&mut self, wants: Vec<Want>) -> Vec<Request> {
         let mut requests = Vec::new();
         for want in wants {
             match want {
-                Want::Leg { cpu, purpose, case, variant, span } => {
+                Want::Leg { cpu, partner, purpose, case, variant, span } => {
                     let faults = match purpose {
                         Purpose::Suspect => (self.remembered)(cpu, case.kernel),
                         _ => Vec::new(),
@@ -145,6 +170,10 @@ impl Bench {
                         variant,
                         size: case.size,
                         seeds: vec![case.seed.0],
+                        next_seed: None,
+                        fresh: false,
+                        partner,
+                        setting: Setting { arrangement: self.arrangement(partner), ..Setting::PLAIN },
                         span: Span::Fixed(span),
                         faults,
                     };
@@ -161,26 +190,61 @@ impl Bench {
         requests
     }
 
-    fn temperatures(&mut self) -> Result<(), String> {
-        let Some(limit) = self.hottest else { return Ok(()) };
-        if self.stop || self.looked.elapsed() < Duration::from_millis(500) {
-            return Ok(());
+    /// Who else is busy during a leg: everybody, if there is anybody.
+    fn arrangement(&self, partner: Option<Cpu>) -> Arrangement {
+        if partner.is_none() && self.cpus.len() == 1 { Arrangement::Solo } else { Arrangement::All }
+    }
+
+    fn golden(&self, case: &Case) -> Option<Vec<u64>> {
+        let table = golden::table::expected(case).map(<[u64]>::to_vec);
+        table.or_else(|| self.live.as_ref()?.known(case))
+    }
+
+    fn temperatures(&mut self) -> Vec<Input> {
+        let Some(limit) = self.hottest else { return Vec::new() };
+        let mut news = Vec::new();
+        for &cpu in &self.cpus {
+            let Some(celsius) = self.sensors.read(cpu).celsius else { continue };
+            if celsius > limit && self.hot.insert(cpu) {
+                news.push(Input::Hot(cpu, celsius));
+            } else if celsius < limit - COOLED_BY && self.hot.remove(&cpu) {
+                news.push(Input::Cooled(cpu, celsius));
+            }
         }
-        self.looked = Instant::now();
-        let hot =
-            self.cpus.iter().find_map(|&cpu| self.sensors.read(cpu).celsius.filter(|c| *c > limit).map(|c| (cpu, c)));
-        if let Some((cpu, celsius)) = hot {
-            self.stop = true;
-            self.remark(format!("ended early: {celsius:.1} °C at cpu {cpu}, --max-temp is {limit:.1} °C"))?;
+        news
+    }
+
+    /// Cpus that were switched off, or taken out of what this process may use.
+    fn taken_away(&mut self) -> Vec<Input> {
+        let online = self.root.cpus("sys/devices/system/cpu/online").ok();
+        // the thread that asks is never pinned, so its mask is the process's
+        let allowed = affinity::mask().ok();
+        let mut news = Vec::new();
+        for &cpu in &self.cpus {
+            let why = match (&online, &allowed) {
+                (Some(online), _) if !online.contains(cpu) => "it went offline",
+                (_, Some(allowed)) if !allowed.contains(cpu) => "this process may no longer use it",
+                _ => continue,
+            };
+            if self.gone.insert(cpu) {
+                news.push(Input::TakenAway(cpu, why.to_owned()));
+            }
         }
-        Ok(())
+        news
     }
 }
 
 impl Director for Bench {
-    fn record(&mut self, event: Event) -> Result<Vec<Request>, String> {
+    fn record(&mut self, mut event: Event) -> Result<Vec<Request>, String> {
+        if let Event::Slice(slice) = &mut event {
+            slice.counters = self.rises.during(slice);
+        }
         self.keep(&event)?;
-        let golden = |case: &Case| golden::table::expected(case).map(<[u64]>::to_vec);
+        let words = match &event {
+            Event::Mismatch(m) => self.case_of(m).and_then(|case| Some((case, self.golden(&case)?))),
+            _ => None,
+        };
+        let golden = |case: &Case| words.as_ref().filter(|(c, _)| c == case).map(|(_, w)| w.clone());
         let root = self.root.clone();
         let counters =
             move || -> Box<dyn Watch> { Box::new(Watched { before: Counters::read(&root), root: root.clone() }) };
@@ -202,7 +266,6 @@ impl Director for Bench {
             self.bar.println(format!("finding: {}", finding.statement));
             self.keep(&Event::Finding(Box::new(finding)))?;
         }
-        self.temperatures()?;
         if !self.bar.is_hidden() {
             let length = self.bar.length().unwrap_or(0) as f64;
             self.bar.set_position((progress * length) as u64);
@@ -217,7 +280,23 @@ impl Director for Bench {
         Surroundings { celsius: readings.celsius, khz: readings.frequency_khz }
     }
 
-    fn stop(&self) -> bool {
-        self.stop
+    fn cannot_run(&mut self, request: &Request) -> Vec<Request> {
+        let why = format!("cpus {} and its partner could not be run together", request.cpu);
+        let wants = self.confirmer.cannot_run(request.cpu, request.spec.kernel, &why);
+        self.work(wants)
+    }
+
+    fn watch(&mut self) -> Vec<Input> {
+        if self.looked.elapsed() < WATCH_EVERY {
+            return Vec::new();
+        }
+        self.looked = Instant::now();
+        let mut news = self.temperatures();
+        news.extend(self.taken_away());
+        news
+    }
+
+    fn node(&self, cpu: Cpu) -> Option<u32> {
+        self.nodes.get(&cpu).copied()
     }
 }

@@ -1,21 +1,33 @@
 //! What several commands do first: read the host, choose cpus and kernels, find the ledger, open it.
 
+use std::collections::BTreeSet;
 use std::path::PathBuf;
-use std::time::{SystemTime, UNIX_EPOCH};
+use std::time::{Duration, SystemTime, UNIX_EPOCH};
 
 use super::args::{Choice, LedgerPlace, parse_variants};
 use crate::error::Error;
-use crate::event::{Event, Job, Opened};
+use crate::event::{Event, Job, Opened, Purpose};
 use crate::host::cpulist::CpuChoice;
 use crate::host::{Cpu, Host, Root};
 use crate::ledger::{self, Journal, Opening};
-use crate::plan::{self, Skipped, Unit};
+use crate::plan::{self, History, Ran, Skipped, Unit};
 use crate::run::checker::Seat;
 use crate::run::driver::unix_ms;
 
+/// Spent by a window before the first slice and after the last.
+pub const OVERHEAD: Duration = Duration::from_millis(400);
+
 /// Reads this host.
 pub fn host() -> Result<Host, Error> {
-    Host::read(&Root::new("/")).map_err(|why| Error::CannotDo(why.to_string()))
+    host_below(std::path::Path::new("/"))
+}
+
+/// Reads this host where its files lie below `root`.
+pub fn host_below(root: &std::path::Path) -> Result<Host, Error> {
+    if !root.is_dir() {
+        return Err(Error::Usage(format!("--root {}: no such folder", root.display())));
+    }
+    Host::read(&Root::new(root)).map_err(|why| Error::CannotDo(why.to_string()))
 }
 
 /// The cpus that are to be tested, with their cores.
@@ -72,9 +84,74 @@ pub fn open_golden() -> Result<(), Error> {
     golden::table::open().map_err(|why| Error::CannotDo(why.to_string()))
 }
 
-/// Golden seeds of a unit.
-pub fn seeds_of(unit: &Unit) -> Vec<u64> {
-    golden::table::cases(unit.kernel, unit.size).into_iter().map(|c| c.seed.0).collect()
+/// Golden seeds of a unit: so many, beginning at 0.
+pub fn seeds_of(unit: &Unit) -> u64 {
+    golden::table::cases(unit.kernel, unit.size).len() as u64
+}
+
+/// Takes a record into a plan's history.
+pub fn remember(history: &mut History, event: &Event) {
+    if let Event::Slice(slice) = event
+        && slice.job == Job::Window
+        && slice.void.is_none()
+        && slice.purpose == Purpose::Plan
+        && let Some((unit, condition)) = plan::unit_of(&slice.kernel, &slice.variant, &slice.condition)
+    {
+        history.add(&Ran {
+            cpu: slice.cpu,
+            partner: slice.partner.map(|p| p.cpu),
+            unit,
+            condition,
+            end_ms: slice.wall_ms.saturating_add(slice.span_ns / 1_000_000),
+            busy_ns: slice.busy_ns,
+            mismatches: slice.mismatches,
+            next_seed: slice.next_seed,
+        });
+    }
+}
+
+/// Whether a record's job is one of this host and part; openings come before all else of their job.
+pub struct OwnJobs {
+    identity: (String, String),
+    jobs: BTreeSet<u64>,
+}
+
+impl OwnJobs {
+    /// Of the host as it is now.
+    pub fn of(host: &Host) -> OwnJobs {
+        OwnJobs { identity: identity(host), jobs: BTreeSet::new() }
+    }
+
+    /// Takes the next record in and says whether it counts.
+    pub fn counts(&mut self, event: &Event) -> bool {
+        match event {
+            Event::Opened(o) => {
+                if (&o.host, &o.part) == (&self.identity.0, &self.identity.1) {
+                    self.jobs.insert(o.job_id);
+                }
+                false
+            }
+            Event::Slice(s) => self.jobs.contains(&s.job_id),
+            _ => false,
+        }
+    }
+}
+
+/// The history of this host and part in a ledger that is only read; empty where there is none.
+pub fn read_history(host: &Host, path: &std::path::Path) -> Result<History, Error> {
+    let mut history = History::default();
+    if !path.exists() {
+        return Ok(history);
+    }
+    let mut own = OwnJobs::of(host);
+    for entry in ledger::Reader::open(path).map_err(cannot)? {
+        if let ledger::Record::Event(event) = &entry.record
+            && own.counts(event)
+        {
+            remember(&mut history, event);
+        }
+    }
+    Ok(history)
 }
 
 /// The ledger's folder.

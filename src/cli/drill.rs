@@ -2,7 +2,7 @@
 //! prove that this build on this host would notice. Every record is marked and never counts.
 
 use std::cell::RefCell;
-use std::collections::{BTreeMap, HashMap};
+use std::collections::BTreeMap;
 use std::rc::Rc;
 use std::time::{Duration, Instant};
 
@@ -10,18 +10,20 @@ use rand_chacha::ChaCha12Rng;
 use rand_chacha::rand_core::{Rng, SeedableRng};
 
 use super::args::{DrillArgs, Format};
-use super::bench::{Bench, Tables};
+use super::bench::Bench;
+use super::live::Truths;
 use super::{common, say, say_json};
+use crate::condition::Setting;
 use crate::error::Error;
 use crate::event::{Closed, Event, Job, NoticedBy, Purpose};
 use crate::exit_code::Exit;
 use crate::host::Cpu;
 use crate::judge::confirm::Confirmer;
-use crate::plan::{Unit, plan};
+use crate::plan::{Site, Unit};
 use crate::report::drill::{DrillReport, Drilled, Noticed};
 use crate::run::driver::{self, unix_ms};
 use crate::run::fault::Fault;
-use crate::run::spec::{Setup, Span, Spec, Track};
+use crate::run::spec::{Phase, Post, Setup, Span, Spec, Track};
 
 /// Length of a drilled slice.
 const SLICE: Duration = Duration::from_millis(80);
@@ -33,7 +35,12 @@ pub fn run(args: &DrillArgs, start: Instant) -> Result<Exit, Error> {
     common::open_golden()?;
     let host = common::host()?;
     let seats = common::seats(&host, &args.choice)?;
-    let (units, _) = common::units(&args.choice)?;
+    let (mut units, _) = common::units(&args.choice)?;
+    // a made-up fault belongs to one core
+    units.retain(|u| kernels::catalogue::find(u.kernel).is_some_and(|k| k.cpus() == 1));
+    if units.is_empty() {
+        return Err(Error::Usage("--kernels: a drill needs a kernel for one cpu; try 'integer.*'".to_owned()));
+    }
     let seed = common::seed(args.seed);
     let (journal, opening, path) = common::open_journal(&args.place, |_| {})?;
     let all = common::all_seats(&host);
@@ -50,7 +57,7 @@ pub fn run(args: &DrillArgs, start: Instant) -> Result<Exit, Error> {
     let budget = Duration::from_secs(120) + (SLICE * 4 + GRACE) * (args.faults + 8);
     let opened = common::opened(&host, Job::Drill, opening.next_job, budget.as_secs_f64(), seed, &seats);
     let confirmer = Confirmer::new(opened.job_id, Job::Drill, all.clone(), cpus.clone());
-    let mut bench = Bench::new(&host, journal, confirmer, opened.job_id, &seats, None);
+    let mut bench = Bench::new(&host, journal, confirmer, opened.job_id, &seats, None, None);
     let watch = Rc::new(RefCell::new(Watcher::new(&drilled)));
     let listener = watch.clone();
     bench.listener = Box::new(move |event| listener.borrow_mut().see(event));
@@ -69,10 +76,11 @@ pub fn run(args: &DrillArgs, start: Instant) -> Result<Exit, Error> {
         longest: SLICE,
         grace: GRACE,
         losses_borne: u32::MAX,
-        arrangement: "all steady 100%".to_owned(),
-        tracks,
+        posts: seats.iter().map(|&(cpu, core)| Post { cpu, core }).collect(),
+        phases: vec![Phase { seconds: budget.as_secs_f64(), open: true, tracks }],
     };
-    let outcome = driver::run(start, setup, Box::new(Tables), all, &mut bench)
+    let truths = Truths { live: None, site: Site::of(&host, &seats) };
+    let outcome = driver::run(start, setup, Box::new(truths), all, &mut bench)
         .map_err(|why| Error::CannotDo(format!("the workers cannot be run: {why}")))?;
     bench.hide_progress();
     bench.close("the drill ended").map_err(cannot)?;
@@ -143,34 +151,33 @@ fn invent(count: u32, cpus: &[Cpu], units: &[Unit], seed: u64) -> Vec<Drilled> {
 
 /// Each cpu's faulty slices with clean ones between, so that what a loss takes with it is never a fault.
 fn tracks(seats: &[(Cpu, u32)], units: &[Unit], drilled: &[Drilled], seed: u64) -> Vec<Track> {
-    let cpus: Vec<Cpu> = seats.iter().map(|(cpu, _)| *cpu).collect();
-    // clean work in plan order, as a window would have it
-    let clean = plan(&cpus, units, &HashMap::new(), SLICE * 2 * units.len() as u32, seed, common::seeds_of);
-    let clean: BTreeMap<Cpu, Vec<_>> = clean.tracks.into_iter().collect();
+    let mut rng = ChaCha12Rng::seed_from_u64(seed ^ 0x636c_6561_6e00);
     let spec = |unit: Unit, seeds: Vec<u64>, faults: Vec<Fault>| Spec {
         purpose: Purpose::Plan,
         kernel: unit.kernel,
         variant: unit.variant,
         size: unit.size,
         seeds,
+        next_seed: None,
+        fresh: false,
+        partner: None,
+        setting: Setting::PLAIN,
         span: Span::Fixed(SLICE),
         faults,
     };
     seats
         .iter()
-        .map(|&(cpu, core)| {
-            let mut filler = clean[&cpu].iter().cycle();
+        .map(|&(cpu, _)| {
             let mut slices = Vec::new();
             for fault in drilled.iter().filter(|d| d.cpu == cpu) {
                 let (kernel, variant, size) = fault.unit;
                 let unit = Unit { kernel, variant, size: kernels::Size(size) };
-                let seeds: Vec<u64> = common::seeds_of(&unit).into_iter().take(2).collect();
-                slices.push(spec(unit, seeds, vec![fault.fault.clone()]));
-                if let Some(next) = filler.next() {
-                    slices.push(spec(next.unit, next.seeds.iter().take(2).copied().collect(), Vec::new()));
-                }
+                let seeds = |unit: &Unit| (0..common::seeds_of(unit).min(2)).collect();
+                slices.push(spec(unit, seeds(&unit), vec![fault.fault.clone()]));
+                let clean = units[(rng.next_u64() % units.len() as u64) as usize];
+                slices.push(spec(clean, seeds(&clean), Vec::new()));
             }
-            Track { cpu, core, slices }
+            Track { cpu, slices }
         })
         .collect()
 }

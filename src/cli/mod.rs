@@ -3,8 +3,12 @@
 mod args;
 mod bench;
 mod common;
+mod coverage;
 mod drill;
+mod explain;
 mod ledger;
+mod live;
+mod rises;
 mod sample;
 mod survey;
 mod window;
@@ -37,12 +41,13 @@ fn command(start: Instant) -> ExitCode {
         Err(error) => return refused(&error),
     };
     let result = match cli.command {
-        Command::Worker { cpu } => return worker::main(WorkerArgs { cpu: args::worker_cpu(cpu) }),
+        Command::Worker { cpu, node } => return worker::main(WorkerArgs { cpu: args::worker_cpu(cpu), node }),
         Command::Survey(args) => survey::run(&args),
         Command::Window(args) => window::run(&args, start),
         Command::Drill(args) => drill::run(&args, start),
         Command::Ledger(LedgerCommand::Show(args)) => ledger::show(&args),
         Command::Ledger(LedgerCommand::Verify(args)) => ledger::verify(&args),
+        Command::Ledger(LedgerCommand::Coverage(args)) => coverage::run(&args),
     };
     match result {
         Ok(exit) => exit.into(),

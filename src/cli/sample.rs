@@ -1,6 +1,8 @@
 //! At start: a sample of the golden tables recomputed by the reference on two cores. They must agree with each other
 //! and with the tables; a core that does not is named before it has judged anything.
 
+use std::time::{Duration, Instant};
+
 use kernels::{Case, catalogue};
 
 use crate::host::Cpu;
@@ -30,12 +32,17 @@ pub fn words_on(cpu: Cpu, case: &Case) -> Result<Vec<u64>, String> {
     std::thread::spawn(work).join().unwrap_or_else(|_| Err("the reference panicked".to_owned()))
 }
 
-/// Recomputes one case a kernel, chosen by `seed`, on the first cpus of two cores.
+/// The sample ends after this time, whichever kernels it has come to; which come first changes with the seed.
+const SAMPLE_FOR: Duration = Duration::from_millis(150);
+
+/// Recomputes cases of different kernels, chosen by `seed`, on the first cpus of two cores: one at least.
 pub fn sample(seats: &[Seat], seed: u64) -> Sampled {
     let Some(&(first, core)) = seats.first() else { return Sampled::default() };
     let second = seats.iter().find(|(_, other)| *other != core).map(|(cpu, _)| *cpu);
-    let cases: Vec<Case> = catalogue::KERNELS
-        .iter()
+    let count = catalogue::KERNELS.len();
+    let cases: Vec<Case> = (0..count)
+        // the same row on both cpus, beginning elsewhere each time
+        .map(|k| catalogue::KERNELS[(k + seed as usize % count) % count])
         .filter_map(|k| {
             let all = golden::table::cases(k.id(), k.sizes()[0]);
             let index = seed as usize % all.len().max(1);
@@ -45,7 +52,13 @@ pub fn sample(seats: &[Seat], seed: u64) -> Sampled {
     let on: Vec<Cpu> = [Some(first), second].into_iter().flatten().collect();
     let answers: Vec<Vec<Option<Vec<u64>>>> = std::thread::scope(|scope| {
         let cases = &cases;
-        let compute = |&cpu: &Cpu| scope.spawn(move || cases.iter().map(|c| words_on(cpu, c).ok()).collect());
+        let compute = |&cpu: &Cpu| {
+            scope.spawn(move || {
+                let begun = Instant::now();
+                let in_time = |index: usize| index == 0 || begun.elapsed() < SAMPLE_FOR;
+                cases.iter().enumerate().map(|(i, c)| in_time(i).then(|| words_on(cpu, c).ok()).flatten()).collect()
+            })
+        };
         let threads: Vec<_> = on.iter().map(compute).collect();
         threads.into_iter().map(|t| t.join().unwrap_or_default()).collect()
     });

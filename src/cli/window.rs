@@ -3,10 +3,14 @@
 use std::cell::RefCell;
 use std::collections::BTreeMap;
 use std::rc::Rc;
+use std::sync::Arc;
 use std::time::{Duration, Instant};
 
 use super::args::{Format, WindowArgs};
-use super::bench::{Bench, Tables};
+use super::bench::Bench;
+use super::common::OwnJobs;
+use super::explain;
+use super::live::{Live, Truths};
 use super::sample::{Sampled, sample};
 use super::{common, say, say_json};
 use crate::error::Error;
@@ -16,25 +20,24 @@ use crate::exit_code::Exit;
 use crate::host::Host;
 use crate::judge::confirm::Confirmer;
 use crate::ledger::{Scope, Tally};
-use crate::plan::{self, History};
+use crate::plan::{self, Brief, History, Site};
 use crate::report::window::{Before, Frame, Gathering, Skipped};
 use crate::run::checker::Seat;
 use crate::run::driver::{self, unix_ms};
-use crate::run::spec::{Setup, Span, Spec, Track};
+use crate::run::spec::{Phase, Post, Setup, Span, Spec, Track};
 
 /// Mismatches of one cell closer together than this are one episode.
 const GAP_MS: u64 = 60_000;
-/// How long past its span a slice may answer.
+/// How long past its span a slice may answer; longer where a hypervisor may withhold a cpu without a trace.
 const GRACE: Duration = Duration::from_secs(2);
-/// Spent before the first slice and after the last.
-const OVERHEAD: Duration = Duration::from_millis(400);
+const GRACE_VIRTUAL: Duration = Duration::from_secs(6);
 /// Workers of one cpu that may be lost before it is left alone.
 const LOSSES_BORNE: u32 = 8;
 
 /// Runs the command.
 pub fn run(args: &WindowArgs, start: Instant) -> Result<Exit, Error> {
     common::open_golden()?;
-    let host = common::host()?;
+    let host = common::host_below(&args.root)?;
     let seats = common::seats(&host, &args.choice)?;
     let (units, skipped) = common::units(&args.choice)?;
     if args.max_temp.is_some() && seats.iter().all(|(cpu, _)| host.sensors.read(*cpu).celsius.is_none()) {
@@ -44,12 +47,19 @@ pub fn run(args: &WindowArgs, start: Instant) -> Result<Exit, Error> {
         ));
     }
     let seed = common::seed(args.seed);
+    let site = Site::of(&host, &seats);
+    if args.explain {
+        return explain::run(args, &host, &site, &units, seed);
+    }
     let identity = common::identity(&host);
-    let mut history = History::new();
+    let mut history = History::default();
+    let mut own = OwnJobs::of(&host);
     let mut past = Tally::new(Scope { host: Some(identity.0), part: Some(identity.1), job_id: None });
     let (journal, opening, path) = common::open_journal(&args.place, |event| {
         past.add(event);
-        remember(&mut history, event);
+        if own.counts(event) {
+            common::remember(&mut history, event);
+        }
     })?;
     let all = common::all_seats(&host);
     let sampled = sample(&all, seed);
@@ -61,21 +71,24 @@ pub fn run(args: &WindowArgs, start: Instant) -> Result<Exit, Error> {
         )));
     }
     let opened = common::opened(&host, Job::Window, opening.next_job, args.budget.as_secs_f64(), seed, &seats);
-    let plan = plan::plan(
-        &seats.iter().map(|(cpu, _)| *cpu).collect::<Vec<_>>(),
-        &units,
-        &history,
-        args.budget.saturating_sub(OVERHEAD),
+    let plan = plan::plan(&Brief {
+        site: &site,
+        units: &units,
+        history: &history,
+        budget: args.budget.saturating_sub(common::OVERHEAD),
+        now_ms: opened.wall_ms,
         seed,
-        common::seeds_of,
-    );
+        seeds: &common::seeds_of,
+    });
+    let live = Arc::new(Live::start(opened.job_id, &all));
     let frame = Frame {
         confidence: args.confidence,
         gap_ms: GAP_MS,
         cpus: seats.clone(),
         before: past.cpus.iter().map(|(cpu, total)| (*cpu, before(total))).collect::<BTreeMap<_, _>>(),
-        rounds: plan.rounds,
+        rounds: plan.rounds(),
         left_out: plan.left_out,
+        grid: explain::grid(&plan.grid),
         skipped: skipped
             .into_iter()
             .map(|s| Skipped { kernel: s.kernel.to_owned(), variant: s.variant.to_string(), why: s.why })
@@ -84,7 +97,7 @@ pub fn run(args: &WindowArgs, start: Instant) -> Result<Exit, Error> {
     };
     let confirmer = Confirmer::new(opened.job_id, Job::Window, all.clone(), opened.cpus.clone());
     let gathering = Rc::new(RefCell::new(Gathering::new(opened.clone())));
-    let mut bench = Bench::new(&host, journal, confirmer, opened.job_id, &seats, args.max_temp);
+    let mut bench = Bench::new(&host, journal, confirmer, opened.job_id, &seats, args.max_temp, Some(live.clone()));
     let listener = gathering.clone();
     bench.listener = Box::new(move |event| listener.borrow_mut().add(event));
     bench.show_progress(args.budget);
@@ -95,12 +108,13 @@ pub fn run(args: &WindowArgs, start: Instant) -> Result<Exit, Error> {
         job: Job::Window,
         budget: args.budget,
         longest: plan::LONGEST_SLICE,
-        grace: GRACE,
+        grace: if opened.virtualised { GRACE_VIRTUAL } else { GRACE },
         losses_borne: LOSSES_BORNE,
-        arrangement: arrangement(&seats).to_owned(),
-        tracks: tracks(&plan, &seats),
+        posts: seats.iter().map(|&(cpu, core)| Post { cpu, core }).collect(),
+        phases: plan.phases.iter().map(phase).collect(),
     };
-    let outcome = driver::run(start, setup, Box::new(Tables), all, &mut bench)
+    let truths = Truths { live: Some(live), site };
+    let outcome = driver::run(start, setup, Box::new(truths), all, &mut bench)
         .map_err(|why| Error::CannotDo(format!("the workers cannot be run: {why}")))?;
     bench.hide_progress();
     let closing = close(&mut bench, &gathering, &frame, &opened, outcome.ending, start);
@@ -186,6 +200,7 @@ fn open(
             controls: Vec::new(),
             counters: Vec::new(),
             lacking: vec!["seen in the start's sample, before any worker ran".to_owned()],
+            partner: None,
             statement: format!(
                 "cpu {cpu} gave other words for {case} by the reference than the table and the other core"
             ),
@@ -201,38 +216,22 @@ fn before(total: &crate::ledger::cells::CpuTotal) -> Before {
     }
 }
 
-fn remember(history: &mut History, event: &Event) {
-    if let Event::Slice(slice) = event
-        && slice.job == Job::Window
-        && slice.void.is_none()
-        && let Some(unit) = plan::unit_of(&slice.kernel, &slice.variant, &slice.condition)
-    {
-        let last = history.entry((slice.cpu, unit)).or_default();
-        *last = (*last).max(slice.wall_ms);
-    }
-}
-
-/// All tested cpus work at once and never rest; a single one is alone.
-fn arrangement(seats: &[Seat]) -> &'static str {
-    if seats.len() > 1 { "all steady 100%" } else { "solo steady 100%" }
-}
-
-fn tracks(plan: &plan::Plan, seats: &[Seat]) -> Vec<Track> {
-    let spec = |planned: &plan::Planned| Spec {
+/// A planned phase as the supervisor takes it.
+fn phase(planned: &plan::Phase) -> Phase {
+    let spec = |slice: &plan::Planned| Spec {
         purpose: Purpose::Plan,
-        kernel: planned.unit.kernel,
-        variant: planned.unit.variant,
-        size: planned.unit.size,
-        seeds: planned.seeds.clone(),
-        span: Span::Share,
+        kernel: slice.unit.kernel,
+        variant: slice.unit.variant,
+        size: slice.unit.size,
+        seeds: slice.seeds.clone(),
+        next_seed: Some(slice.next_seed),
+        fresh: slice.fresh,
+        partner: slice.partner,
+        setting: planned.setting,
+        span: Span::Share(slice.share),
         faults: Vec::new(),
     };
-    plan.tracks
-        .iter()
-        .map(|(cpu, slices)| Track {
-            cpu: *cpu,
-            core: seats.iter().find(|(c, _)| c == cpu).map_or(cpu.0, |(_, core)| *core),
-            slices: slices.iter().map(spec).collect(),
-        })
-        .collect()
+    let tracks =
+        planned.tracks.iter().map(|(cpu, slices)| Track { cpu: *cpu, slices: slices.iter().map(spec).collect() });
+    Phase { seconds: planned.seconds, open: planned.open, tracks: tracks.collect() }
 }

@@ -3,6 +3,9 @@
 //! The expected words are recomputed by the reference on two other cores; the same case is run again on the suspect
 //! and, in turns (ABAB), on control cores; counters of machine checks and memory errors are read before and after.
 //! Whatever cannot be done is said in the finding.
+//!
+//! Where two cpus failed together, each is run with a third one in its turn: what fails again whenever one of them is
+//! there, and not with the other, names it. Without a third core the finding speaks of one of two, and convicts nobody.
 
 use std::time::Duration;
 
@@ -27,6 +30,8 @@ pub enum Want {
     Leg {
         /// Where.
         cpu: Cpu,
+        /// And with whom, for a kernel of two cpus.
+        partner: Option<Cpu>,
         /// Suspect or control.
         purpose: Purpose,
         /// Kernel, seed, size.
@@ -89,9 +94,17 @@ impl Confirmer {
         Confirmer { job_id, job, seats, workers, open: Vec::new() }
     }
 
-    fn elsewhere(&self, cpu: Cpu) -> Vec<Cpu> {
-        let core = self.seats.iter().find(|(c, _)| *c == cpu).map(|(_, core)| *core);
-        self.seats.iter().filter(|(c, k)| *c != cpu && Some(*k) != core).map(|(c, _)| *c).collect()
+    /// Cpus on other cores than these.
+    fn elsewhere(&self, cpu: Cpu, partner: Option<Cpu>) -> Vec<Cpu> {
+        let core_of = |cpu: Cpu| self.seats.iter().find(|(c, _)| *c == cpu).map(|(_, core)| *core);
+        let own = [core_of(cpu), partner.and_then(core_of)];
+        let other = |c: Cpu, core: u32| c != cpu && Some(c) != partner && !own.contains(&Some(core));
+        self.seats.iter().filter(|(c, core)| other(*c, *core)).map(|(c, _)| *c).collect()
+    }
+
+    /// A leg that was asked for cannot be run.
+    pub fn cannot_run(&mut self, cpu: Cpu, kernel: &str, why: &str) -> Vec<Want> {
+        self.leg_failed(cpu, kernel, why)
     }
 
     /// Takes an event in; answers with what is to be done next. `golden` gives the golden words of a case and
@@ -120,7 +133,11 @@ impl Confirmer {
         counters: impl Fn() -> Box<dyn Counters>,
     ) -> Vec<Want> {
         let mine = |o: &&mut Open| o.mismatch.cpu == mismatch.cpu;
-        let same = |o: &&mut Open| o.mismatch.kernel == mismatch.kernel && o.mismatch.variant == mismatch.variant;
+        let same = |o: &&mut Open| {
+            o.mismatch.kernel == mismatch.kernel
+                && o.mismatch.variant == mismatch.variant
+                && o.mismatch.partner == mismatch.partner
+        };
         if let Some(open) = self.open.iter_mut().filter(mine).find(same) {
             open.mismatches += 1;
             return Vec::new();
@@ -135,7 +152,7 @@ impl Confirmer {
         };
         let case = Case { kernel: kernel.id(), seed: Seed(seed), size: Size(mismatch.size) };
         let Some(expected) = golden(&case) else { return Vec::new() };
-        let others = self.elsewhere(mismatch.cpu);
+        let others = self.elsewhere(mismatch.cpu, mismatch.partner);
         let mut lacking = Vec::new();
         if others.len() < 2 {
             lacking.push(match others.len() {
@@ -148,7 +165,10 @@ impl Confirmer {
         }
         let control_cpus: Vec<Cpu> = others.iter().copied().filter(|c| self.workers.contains(c)).take(2).collect();
         if control_cpus.is_empty() {
-            lacking.push("no other core is under test, so there was no control".to_owned());
+            lacking.push(match mismatch.partner {
+                None => "no other core is under test, so there was no control".to_owned(),
+                Some(_) => "no third core is under test, so the two cannot be told apart".to_owned(),
+            });
         }
         let recompute_on: Vec<Cpu> = others.into_iter().take(2).collect();
         let ticket = self.open.len();
@@ -182,7 +202,8 @@ impl Confirmer {
             return self.leg_failed(slice.cpu, &slice.kernel, &format!("a leg on cpu {} is void: {why}", slice.cpu));
         }
         let Some(open) = self.waiting_for(slice.cpu, &slice.kernel) else { return Vec::new() };
-        let leg = Leg { cpu: slice.cpu, runs: slice.runs, mismatches: slice.mismatches };
+        let partner = slice.partner.map(|p| p.cpu);
+        let leg = Leg { cpu: slice.cpu, partner, runs: slice.runs, mismatches: slice.mismatches };
         match slice.purpose {
             Purpose::Suspect => open.suspect.push(leg),
             _ => open.controls.push(leg),
@@ -212,19 +233,23 @@ impl Confirmer {
     /// Findings that have become complete since the last call.
     pub fn completed(&mut self, wall_ms: u64) -> Vec<Finding> {
         let (job_id, job) = (self.job_id, self.job);
+        let seats = &self.seats;
+        let core_of = |cpu: Cpu| seats.iter().find(|(c, _)| *c == cpu).map(|(_, core)| *core);
         let ready = self.open.iter_mut().filter(|o| !o.closed && o.complete());
-        ready.map(|o| o.close(job_id, job, wall_ms)).collect()
+        ready.map(|o| o.close(job_id, job, wall_ms, &core_of)).collect()
     }
 
     /// Findings for everything still under way at the end, incomplete as they are.
     pub fn close(&mut self, why: &str, wall_ms: u64) -> Vec<Finding> {
         let (job_id, job) = (self.job_id, self.job);
+        let seats = &self.seats;
+        let core_of = |cpu: Cpu| seats.iter().find(|(c, _)| *c == cpu).map(|(_, core)| *core);
         let mut findings = Vec::new();
         for open in self.open.iter_mut().filter(|o| !o.closed) {
             if !open.complete() {
                 open.lacking.push(format!("{why} before the confirmation was finished"));
             }
-            findings.push(open.close(job_id, job, wall_ms));
+            findings.push(open.close(job_id, job, wall_ms, &core_of));
         }
         findings
     }
@@ -245,15 +270,22 @@ impl Open {
                 return None;
             }
             self.legs_begun += 1;
-            let (cpu, purpose) = if index.is_multiple_of(2) {
-                (self.mismatch.cpu, Purpose::Suspect)
+            let (first, second) = (self.mismatch.cpu, self.mismatch.partner);
+            let (cpu, partner, purpose) = if index.is_multiple_of(2) {
+                (first, second, Purpose::Suspect)
             } else if self.control_cpus.is_empty() {
                 continue;
             } else {
-                (self.control_cpus[pair % self.control_cpus.len()], Purpose::Control)
+                let third = self.control_cpus[pair / 2 % self.control_cpus.len()];
+                match second {
+                    None => (self.control_cpus[pair % self.control_cpus.len()], None, Purpose::Control),
+                    // by turns the first and the second of the pair with a third, each in its own role
+                    Some(_) if pair.is_multiple_of(2) => (first, Some(third), Purpose::Control),
+                    Some(second) => (third, Some(second), Purpose::Control),
+                }
             };
             self.waiting = Some((cpu, purpose));
-            return Some(Want::Leg { cpu, purpose, case: self.case, variant: self.variant, span: LEGS[pair] });
+            return Some(Want::Leg { cpu, partner, purpose, case: self.case, variant: self.variant, span: LEGS[pair] });
         }
     }
 
@@ -261,7 +293,26 @@ impl Open {
         self.waiting.is_none() && self.recomputed.len() >= self.recompute_on.len()
     }
 
-    fn close(&mut self, job_id: u64, job: Job, wall_ms: u64) -> Finding {
+    /// Where two cpus failed together: which of them is named, and how far that goes. Nothing for a kernel of one cpu.
+    fn told_apart(&self) -> (Option<Cpu>, Option<Confirmation>) {
+        let (first, Some(second)) = (self.mismatch.cpu, self.mismatch.partner) else { return (None, None) };
+        let sum = |keep: &dyn Fn(&&Leg) -> bool| {
+            self.controls.iter().filter(keep).fold((0, 0), |(r, w), l| (r + l.runs, w + l.mismatches))
+        };
+        let (first_runs, first_wrong) = sum(&|l| l.cpu == first);
+        let (second_runs, second_wrong) = sum(&|l| l.partner == Some(second));
+        let both_ran = first_runs > 0 && second_runs > 0;
+        match (first_wrong > 0, second_wrong > 0) {
+            (true, true) => (None, Some(Confirmation::Shared)),
+            (true, false) if both_ran => (Some(first), Some(Confirmation::Repeated)),
+            (false, true) if both_ran => (Some(second), Some(Confirmation::Repeated)),
+            _ if self.failed_again() => (None, Some(Confirmation::OneOfTwo)),
+            _ if both_ran => (None, Some(Confirmation::Once)),
+            _ => (None, Some(Confirmation::Incomplete)),
+        }
+    }
+
+    fn close(&mut self, job_id: u64, job: Job, wall_ms: u64, core_of: &dyn Fn(Cpu) -> Option<u32>) -> Finding {
         self.closed = true;
         let mut equal = 0;
         let mut refuted = Vec::new();
@@ -274,8 +325,11 @@ impl Open {
         }
         let control_runs: u64 = self.controls.iter().map(|l| l.runs).sum();
         let control_wrong: u64 = self.controls.iter().map(|l| l.mismatches).sum();
+        let (convicted, told_apart) = self.told_apart();
         let confirmation = if !refuted.is_empty() {
             Confirmation::Refuted
+        } else if let Some(confirmation) = told_apart {
+            if equal == 0 { Confirmation::Incomplete } else { confirmation }
         } else if control_wrong > 0 {
             Confirmation::Shared
         } else if equal == 0 || control_runs == 0 || self.suspect.is_empty() {
@@ -287,11 +341,18 @@ impl Open {
         };
         let m = &self.mismatch;
         let statement = self.statement(confirmation, equal, &refuted);
+        // the finding speaks of the one that is named; its partner stays beside it
+        let (cpu, partner) = match (m.partner, convicted) {
+            (Some(second), Some(cpu)) if cpu == second => (second, Some(m.cpu)),
+            (partner, _) => (m.cpu, partner),
+        };
+        let core = if cpu == m.cpu { m.core } else { core_of(cpu).unwrap_or(cpu.0) };
         Finding {
             job_id,
             job,
-            cpu: m.cpu,
-            core: m.core,
+            cpu,
+            core,
+            partner,
             kernel: m.kernel.clone(),
             variant: m.variant.clone(),
             seed: m.seed,
@@ -311,6 +372,15 @@ impl Open {
         }
     }
 
+    /// Whose view of a pair's work was wrong, if that is known.
+    fn view(&self) -> String {
+        let (Some(word), Some(second)) = (self.mismatch.words.first(), self.mismatch.partner) else {
+            return String::new();
+        };
+        let who = if (word.index as usize) < self.expected.len() / 2 { self.mismatch.cpu } else { second };
+        format!(" (first seen by cpu {who})")
+    }
+
     fn statement(&self, confirmation: Confirmation, equal: usize, refuted: &[Cpu]) -> String {
         let m = &self.mismatch;
         let total = |legs: &[Leg]| legs.iter().fold((0, 0), |(r, w), l| (r + l.runs, w + l.mismatches));
@@ -320,10 +390,25 @@ impl Open {
             NoticedBy::Comparison => "gave a wrong output",
             NoticedBy::Fold => "let a wrong output pass its own comparison",
         };
-        let what = format!("cpu {} {seen} in {} {}", m.cpu, m.kernel, m.variant);
+        let what = match m.partner {
+            None => format!("cpu {} {seen} in {} {}", m.cpu, m.kernel, m.variant),
+            Some(second) => {
+                format!("cpus {} and {second} together {seen} in {} {}{}", m.cpu, m.kernel, m.variant, self.view())
+            }
+        };
         let again = format!("wrong again in {suspect_wrong} of {suspect_runs} runs");
         let control = format!("{control_wrong} of {control_runs} on control cores");
         match confirmation {
+            Confirmation::Repeated if m.partner.is_some() => {
+                let named = self.told_apart().0.unwrap_or(m.cpu);
+                format!(
+                    "{what}; {again}; wrong with a third cpu where cpu {named} took part, and not without it: cpu {named}"
+                )
+            }
+            Confirmation::OneOfTwo => format!(
+                "{what}; {again}, {control}; which of the two it is cannot be told{}",
+                if control_runs == 0 { " without a third core" } else { "" }
+            ),
             Confirmation::Repeated => {
                 format!(
                     "{what}; {again}, {control}; expected words recomputed on {equal} other core{}",

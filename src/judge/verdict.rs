@@ -53,6 +53,8 @@ pub struct Known {
     pub slices_wrong: u64,
     /// Planned slices with mismatches in earlier jobs of the same host and part.
     pub slices_wrong_before: u64,
+    /// Slices of kernels for two cpus with mismatches, in which nobody else was found to be the one.
+    pub together_wrong: u64,
     /// Confirmations of this job.
     pub confirmations: Vec<Confirmation>,
     /// Confirmed findings of earlier jobs of the same host and part.
@@ -125,7 +127,7 @@ pub static RULES: &[Rule] = &[
         when: "any other mismatch",
         then: Verdict::Watch,
         next: "run longer windows on this core; a second mismatch settles it",
-        holds: |k| k.slices_wrong > 0 || !k.confirmations.is_empty(),
+        holds: |k| k.slices_wrong > 0 || k.together_wrong > 0 || !k.confirmations.is_empty(),
     },
     Rule {
         when: "a worker crashed, hung or babbled on this core",

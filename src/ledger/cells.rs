@@ -94,8 +94,10 @@ impl Cell {
 pub struct CpuTotal {
     /// Physical cores under which it stands on record; more than one if numbers shifted between boots.
     pub cores: BTreeSet<u32>,
-    /// All that it ran and that counts.
+    /// All that it ran by itself and that counts.
     pub all: Cell,
+    /// All that it ran together with another cpu; a wrong output there is not told apart between the two.
+    pub together: Cell,
     /// Workers lost on it, in the order of the ledger.
     pub lost: Vec<Lost>,
     /// Findings about it, in the order of the ledger.
@@ -295,7 +297,12 @@ impl Tally {
         let Slice { cpu, core, kernel, variant, condition, .. } = slice.clone();
         let key = CellKey { core, kernel: kernel.clone(), variant: variant.clone(), condition };
         self.cells.entry(key).or_default().add(slice);
-        self.cpu(cpu, core).all.add(slice);
+        if let Some(partner) = slice.partner {
+            self.cpu(cpu, core).together.add(slice);
+            self.cpu(partner.cpu, partner.core).together.add(slice);
+        } else {
+            self.cpu(cpu, core).all.add(slice);
+        }
         let cover = self.covers.entry(CoverKey { cpu, kernel, variant }).or_default();
         cover.all.add(slice);
         cover.operations += u128::from(slice.operations);

@@ -43,6 +43,10 @@ fn slice(job_id: u64, number: u64) -> Slice {
         checked_on: Some(Cpu(0)),
         void: None,
         surroundings: Surroundings::default(),
+        partner: None,
+        next_seed: None,
+        steps: None,
+        counters: Vec::new(),
     }
 }
 
@@ -67,6 +71,7 @@ fn mismatch(job_id: u64, number: u64) -> Mismatch {
         previous_kernel: None,
         neighbours: vec![],
         surroundings: Surroundings::default(),
+        partner: None,
     }
 }
 
@@ -82,6 +87,7 @@ fn lost(job_id: u64, job: Job) -> Event {
         condition: "solo".into(),
         wall_ms: 5,
         how: How::Signal(4),
+        partner: None,
     })
 }
 
@@ -107,6 +113,7 @@ fn finding(job_id: u64, job: Job) -> Event {
         counters: vec![],
         lacking: vec![],
         statement: "x".into(),
+        partner: None,
     }))
 }
 

@@ -71,6 +71,7 @@ impl OpenIntents {
             condition: a.condition.clone(),
             wall_ms: *wall_ms,
             how: How::Abandoned,
+            partner: a.partner,
         });
         lost.collect()
     }

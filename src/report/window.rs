@@ -7,6 +7,7 @@ use serde::Serialize;
 
 use super::figures::{Figures, short};
 use super::text::{Table, folded, printable};
+use crate::condition::Condition;
 use crate::event::{Confirmation, Ending, Event, Finding, Lost, Opened, Purpose};
 use crate::host::Cpu;
 use crate::judge::verdict::{self, Known, Verdict};
@@ -39,6 +40,8 @@ pub struct Frame {
     pub rounds: u32,
     /// Units that each cpu leaves out.
     pub left_out: usize,
+    /// What there is to cover.
+    pub grid: GridReport,
     /// Variants that cannot run here.
     pub skipped: Vec<Skipped>,
     /// Where the records are.
@@ -53,6 +56,9 @@ pub struct Gathering {
     findings: Vec<Finding>,
     lost: Vec<Lost>,
     remarks: Vec<String>,
+    /// Pairs of cpus in each slice that went wrong for two.
+    pairs_wrong: Vec<(Cpu, Cpu)>,
+    conditions: BTreeMap<String, u128>,
 }
 
 impl Gathering {
@@ -60,7 +66,16 @@ impl Gathering {
     pub fn new(opened: Opened) -> Gathering {
         let mut tally = Tally::new(Scope { job_id: Some(opened.job_id), ..Scope::default() });
         tally.add(&Event::Opened(opened.clone()));
-        Gathering { opened, tally, busy_ns: 0, findings: Vec::new(), lost: Vec::new(), remarks: Vec::new() }
+        Gathering {
+            opened,
+            tally,
+            busy_ns: 0,
+            findings: Vec::new(),
+            lost: Vec::new(),
+            remarks: Vec::new(),
+            pairs_wrong: Vec::new(),
+            conditions: BTreeMap::new(),
+        }
     }
 
     /// Takes the next event in.
@@ -68,7 +83,26 @@ impl Gathering {
         self.tally.add(event);
         match event {
             Event::Slice(slice) => {
-                self.busy_ns += u128::from(slice.busy_ns);
+                let busy = slice.busy_ns + slice.partner.map_or(0, |p| p.busy_ns);
+                self.busy_ns += u128::from(busy);
+                if slice.void.is_none()
+                    && slice.purpose == Purpose::Plan
+                    && let Ok(condition) = slice.condition.parse::<Condition>()
+                {
+                    *self.conditions.entry(condition.setting.to_string()).or_default() += u128::from(busy);
+                }
+                if let (true, true, Some(partner)) = (slice.mismatches > 0, slice.void.is_none(), slice.partner) {
+                    self.pairs_wrong.push((slice.cpu, partner.cpu));
+                }
+                if !slice.counters.is_empty() {
+                    self.remarks.push(format!(
+                        "during slice {} of cpu {} in {}: {}",
+                        slice.slice,
+                        slice.cpu,
+                        slice.kernel,
+                        slice.counters.join("; ")
+                    ));
+                }
                 if let (Some(why), true) = (&slice.void, slice.runs > 0) {
                     self.remarks.push(format!("slice {} of cpu {} is void: {why}", slice.slice, slice.cpu));
                 }
@@ -87,16 +121,23 @@ impl Gathering {
 
     fn known(&self, cpu: Cpu, before: Before) -> Known {
         let total = self.tally.cpus.get(&cpu);
-        let mine = |f: &&Finding| f.cpu == cpu;
+        // where it could not be told which of two it was, both are watched
+        let mine = |f: &&Finding| f.cpu == cpu || f.confirmation != Confirmation::Repeated && f.partner == Some(cpu);
+        let convicted =
+            |other: Cpu| self.findings.iter().any(|f| f.cpu == other && f.confirmation == Confirmation::Repeated);
+        let unexplained =
+            self.pairs_wrong.iter().filter(|(a, b)| (*a == cpu && !convicted(*b)) || (*b == cpu && !convicted(*a)));
         let confirmations: Vec<Confirmation> = self.findings.iter().filter(mine).map(|f| f.confirmation).collect();
         let orphans = self.tally.without_slice().filter(|m| m.cpu == cpu && m.purpose == Purpose::Plan);
         Known {
-            runs: total.map_or(0, |t| u64::try_from(t.all.runs).unwrap_or(u64::MAX)),
+            runs: total.map_or(0, |t| u64::try_from(t.all.runs + t.together.runs).unwrap_or(u64::MAX)),
+            together_wrong: unexplained.count() as u64,
             slices_wrong: total.map_or(0, |t| t.all.bad.len() as u64) + u64::from(orphans.count() > 0),
             slices_wrong_before: before.slices_wrong,
             confirmations,
             confirmed_before: before.confirmed,
-            lost: self.lost.iter().filter(|l| l.cpu == cpu).map(|l| l.how.clone()).collect(),
+            // of a worker that was lost with two cpus at work nobody knows which of them it was
+            lost: self.lost.iter().filter(|l| l.cpu == cpu || l.partner == Some(cpu)).map(|l| l.how.clone()).collect(),
         }
     }
 
@@ -140,6 +181,12 @@ impl Gathering {
             kernel_share: self.busy_ns as f64 / 1e9 / (wall_s * frame.cpus.len().max(1) as f64),
             rounds: frame.rounds,
             left_out: frame.left_out,
+            grid: frame.grid,
+            conditions: self
+                .conditions
+                .iter()
+                .map(|(condition, busy)| ConditionReport { condition: condition.clone(), busy_s: *busy as f64 / 1e9 })
+                .collect(),
             cores,
             kernels: kernels.collect(),
             skipped: frame.skipped.clone(),
@@ -154,6 +201,7 @@ impl Gathering {
                     variant: l.variant.clone(),
                     condition: l.condition.clone(),
                     how: l.how.to_string(),
+                    partner: l.partner,
                 })
                 .collect(),
             remarks: self.remarks.clone(),
@@ -176,6 +224,26 @@ impl Gathering {
             figures,
         }
     }
+}
+
+/// Everything that there is to cover on this host.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Serialize)]
+pub struct GridReport {
+    /// Cpu × kernel × variant × condition.
+    pub cells: u64,
+    /// Never covered before this window.
+    pub uncovered_before: u64,
+    /// Windows like this one that cover all of it; absent where they are too short for it.
+    pub windows: Option<u64>,
+}
+
+/// Time under one condition.
+#[derive(Clone, Debug, PartialEq, Serialize)]
+pub struct ConditionReport {
+    /// Who else was busy, how hard, after what.
+    pub condition: String,
+    /// Processor time inside kernels, seconds, all cpus together.
+    pub busy_s: f64,
 }
 
 /// A variant that cannot run here.
@@ -245,6 +313,9 @@ pub struct LostReport {
     pub condition: String,
     /// What became of it.
     pub how: String,
+    /// The second cpu of a kernel for two.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub partner: Option<Cpu>,
 }
 
 /// The document `proofhouse/window/1`.
@@ -267,6 +338,8 @@ pub struct WindowReport {
     pub kernel_share: f64,
     pub rounds: u32,
     pub left_out: usize,
+    pub grid: GridReport,
+    pub conditions: Vec<ConditionReport>,
     pub cores: Vec<CoreReport>,
     pub kernels: Vec<KernelReport>,
     pub skipped: Vec<Skipped>,
@@ -297,8 +370,7 @@ impl WindowReport {
             (0, n) => format!(
                 "Budget too short for every kernel: {n} units a cpu left for next time (longest untested first)"
             ),
-            (1, _) => "Every kernel, variant and size was planned once a cpu".to_owned(),
-            (n, _) => format!("Every kernel, variant and size was planned {n} times a cpu"),
+            _ => "Every kernel, variant and size was planned on every cpu, the rest of the budget by value".to_owned(),
         };
         let origin = format!("{coverage}; seed {}, job {} in {}", self.seed, self.job_id, printable(&self.ledger));
         let _ = writeln!(out, "{}", folded(&origin));
@@ -355,12 +427,18 @@ impl WindowReport {
             }
         }
         for l in &self.lost {
+            let with = l.partner.map_or(String::new(), |p| format!(" together with cpu {p}"));
             let text =
-                format!("Lost: the worker of cpu {} in {} {}: {}", l.cpu, l.kernel, l.variant, printable(&l.how));
+                format!("Lost: the worker of cpu {}{with} in {} {}: {}", l.cpu, l.kernel, l.variant, printable(&l.how));
             let _ = writeln!(out, "\n{}", folded(&text));
         }
         for remark in &self.remarks {
             let _ = writeln!(out, "\n{}", folded(&format!("Remark: {}", printable(remark))));
+        }
+        if self.conditions.len() > 1 {
+            let list: Vec<String> =
+                self.conditions.iter().map(|c| format!("{} {:.1} s", c.condition, c.busy_s)).collect();
+            let _ = writeln!(out, "\n{}", folded(&format!("Busy time by condition: {}", list.join(", "))));
         }
         if !self.skipped.is_empty() {
             let _ = writeln!(out, "\n{} variants cannot run here; `proofhouse survey` says why.", self.skipped.len());

@@ -29,11 +29,15 @@ fn check_all(tasks: &Receiver<FoldTask>, seats: &[Seat], answer: impl Fn(Opinion
     }
 }
 
-/// Cpus whose core is not that of `cpu`, beginning at another place each turn.
-pub fn elsewhere(cpu: Cpu, seats: &[Seat], turn: usize) -> Vec<Cpu> {
-    let own = seats.iter().find(|(c, _)| *c == cpu).map(|(_, core)| *core);
-    let mut others: Vec<Cpu> =
-        seats.iter().filter(|(c, core)| *c != cpu && Some(*core) != own).map(|(c, _)| *c).collect();
+/// Cpus whose core is neither that of `cpu` nor of its partner, beginning at another place each turn.
+pub fn elsewhere(cpu: Cpu, with: Option<Cpu>, seats: &[Seat], turn: usize) -> Vec<Cpu> {
+    let core_of = |cpu: Cpu| seats.iter().find(|(c, _)| *c == cpu).map(|(_, core)| *core);
+    let own = [core_of(cpu), with.and_then(core_of)];
+    let mut others: Vec<Cpu> = seats
+        .iter()
+        .filter(|(c, core)| *c != cpu && Some(*c) != with && !own.contains(&Some(*core)))
+        .map(|(c, _)| *c)
+        .collect();
     if !others.is_empty() {
         let middle = turn % others.len();
         others.rotate_left(middle);
@@ -43,7 +47,8 @@ pub fn elsewhere(cpu: Cpu, seats: &[Seat], turn: usize) -> Vec<Cpu> {
 
 fn check(task: &FoldTask, seats: &[Seat], turn: usize) -> Opinion {
     let nothing = Opinion { slice: task.slice, of: task.of, on: None, wrong: Vec::new(), remark: None };
-    let mut able = elsewhere(task.of, seats, turn).into_iter().filter_map(|cpu| folds_on(cpu, task).map(|f| (cpu, f)));
+    let mut able =
+        elsewhere(task.of, task.with, seats, turn).into_iter().filter_map(|cpu| folds_on(cpu, task).map(|f| (cpu, f)));
     let Some((on, first)) = able.next() else { return nothing };
     let differs = |folds: &[u64]| -> Vec<usize> {
         task.cases
@@ -97,9 +102,10 @@ mod tests {
     #[test]
     fn opinions_come_from_other_cores_in_turn() {
         let seats = [(Cpu(0), 0), (Cpu(1), 0), (Cpu(2), 1), (Cpu(3), 1), (Cpu(6), 2)];
-        assert_eq!(elsewhere(Cpu(1), &seats, 0), [Cpu(2), Cpu(3), Cpu(6)]);
-        assert_eq!(elsewhere(Cpu(1), &seats, 2), [Cpu(6), Cpu(2), Cpu(3)]);
-        assert!(elsewhere(Cpu(0), &seats[..2], 5).is_empty());
+        assert_eq!(elsewhere(Cpu(1), None, &seats, 0), [Cpu(2), Cpu(3), Cpu(6)]);
+        assert_eq!(elsewhere(Cpu(1), None, &seats, 2), [Cpu(6), Cpu(2), Cpu(3)]);
+        assert_eq!(elsewhere(Cpu(1), Some(Cpu(2)), &seats, 0), [Cpu(6)]);
+        assert!(elsewhere(Cpu(0), None, &seats[..2], 5).is_empty());
     }
 
     #[test]
@@ -113,7 +119,8 @@ mod tests {
         right.push_digest(digest(&words), 1000);
         let cases = vec![(words.clone(), 1000, right.0), (words.clone(), 1000, right.0 ^ 4), (words, 0, 0)];
         let of = seats[0].0;
-        let opinion = std::thread::spawn(move || check(&FoldTask { slice: 1, of, cases }, &seats, 0)).join().unwrap();
+        let opinion =
+            std::thread::spawn(move || check(&FoldTask { slice: 1, of, with: None, cases }, &seats, 0)).join().unwrap();
         assert_eq!(opinion.wrong, [1]);
         assert_ne!(opinion.on, Some(of));
     }

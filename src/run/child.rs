@@ -41,10 +41,17 @@ pub struct Child {
 }
 
 impl Child {
-    /// Starts `program worker --cpu N`.
-    pub fn start(program: &Path, cpu: Cpu, generation: u64, hear: Sender<Heard>) -> io::Result<Child> {
+    /// Starts `program worker --cpu N [--node N]`.
+    pub fn start(
+        program: &Path,
+        cpu: Cpu,
+        node: Option<u32>,
+        generation: u64,
+        hear: Sender<Heard>,
+    ) -> io::Result<Child> {
         let mut process = Command::new(program)
             .args(["worker", "--cpu", &cpu.to_string()])
+            .args(node.map(|node| format!("--node={node}")))
             .stdin(Stdio::piped())
             .stdout(Stdio::piped())
             // a Ctrl-C is meant for the supervisor, which ends its workers when they have reported

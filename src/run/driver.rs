@@ -20,10 +20,14 @@ pub trait Director {
     fn record(&mut self, event: Event) -> Result<Vec<Request>, String>;
     /// Called often; `slices_left` and `progress` (0 to 1) are for people.
     fn poll(&mut self, at: Duration, progress: f64, slices_left: usize) -> Result<Vec<Request>, String>;
+    /// Work for two cpus that was asked for and cannot be done.
+    fn cannot_run(&mut self, request: &Request) -> Vec<Request>;
+    /// What the host has to say since the last call: cpus that have become too hot or cool, or were taken away.
+    fn watch(&mut self) -> Vec<Input>;
+    /// The memory node of a cpu, if its memory is to come from there.
+    fn node(&self, cpu: Cpu) -> Option<u32>;
     /// Readings of a cpu, if the host has any.
     fn surroundings(&mut self, cpu: Cpu) -> Surroundings;
-    /// Whether the job is to end before its budget.
-    fn stop(&self) -> bool;
 }
 
 /// How a job went, as far as the driver knows.
@@ -169,8 +173,10 @@ impl Driver<'_> {
         let progress = self.supervisor.progress(at);
         let wanted = self.director.poll(at, progress, self.supervisor.slices_left());
         self.requests(wanted);
-        let input = if self.director.stop() { Input::Interrupt } else { Input::Tick };
-        self.feed(None, input);
+        for input in self.director.watch() {
+            self.feed(None, input);
+        }
+        self.feed(None, Input::Tick);
     }
 
     fn requests(&mut self, wanted: Result<Vec<Request>, String>) {
@@ -216,6 +222,10 @@ impl Driver<'_> {
                     let wanted = self.director.record(event);
                     self.requests(wanted);
                 }
+                Action::CannotRun(request) => {
+                    let wanted = self.director.cannot_run(&request);
+                    self.requests(Ok(wanted));
+                }
                 Action::Finish(ending) => self.ending = Some(ending),
             }
         }
@@ -223,7 +233,8 @@ impl Driver<'_> {
 
     fn start_child(&mut self, cpu: Cpu) {
         self.generation += 1;
-        match Child::start(&self.program, cpu, self.generation, self.hear.clone()) {
+        let node = self.director.node(cpu);
+        match Child::start(&self.program, cpu, node, self.generation, self.hear.clone()) {
             Ok(child) => {
                 self.children.insert(cpu, child);
             }

@@ -7,7 +7,8 @@ use std::time::Duration;
 use kernels::{Case, Seed, Work, catalogue};
 
 use super::protocol::{CaseOrder, SliceOrder, SliceReport};
-use super::spec::{Span, Spec, Track, Truth};
+use super::spec::{Post, Span, Spec, Truth};
+use crate::condition::{Before, Condition, Role};
 use crate::event::Surroundings;
 use crate::host::Cpu;
 
@@ -31,10 +32,13 @@ pub(super) struct Flight {
     pub span: Duration,
     pub condition: String,
     pub work: Work,
+    /// Of table seeds first, then of fresh ones.
     pub expected: Vec<Arc<Vec<u64>>>,
     /// When it became the worker's next slice.
     pub ordered: Duration,
     pub begun: Option<Duration>,
+    /// The program itself was held up while this was the worker's next or present slice.
+    pub shaken: bool,
     /// Processor time of the worker when the slice began.
     pub busy_before: Duration,
     pub wall_ms: u64,
@@ -42,7 +46,7 @@ pub(super) struct Flight {
 }
 
 impl Flight {
-    pub fn new(slice: u64, spec: Spec, span: Duration, condition: String, truth: &dyn Truth) -> Result<Flight, String> {
+    pub fn new(slice: u64, cpu: Cpu, mut spec: Spec, span: Duration, truth: &mut dyn Truth) -> Result<Flight, String> {
         let kernel = catalogue::find(spec.kernel).ok_or_else(|| format!("no kernel {}", spec.kernel))?;
         let mut expected = Vec::with_capacity(spec.seeds.len());
         for &seed in &spec.seeds {
@@ -50,7 +54,14 @@ impl Flight {
             let words = truth.expected(&case).ok_or_else(|| format!("no golden words for {case}"))?;
             expected.push(Arc::new(words));
         }
+        if let Some((seed, words)) = if spec.fresh { truth.fresh(spec.kernel, spec.size, cpu) } else { None } {
+            spec.seeds.push(seed.0);
+            expected.push(Arc::new(words));
+        }
         let work = kernel.work(spec.size);
+        let role = if spec.partner.is_some() { Role::First } else { Role::Alone };
+        let level = truth.level(spec.size, cpu, spec.setting);
+        let condition = Condition { setting: spec.setting, role, level, kib: spec.size.0 }.to_string();
         Ok(Flight {
             slice,
             spec,
@@ -60,6 +71,7 @@ impl Flight {
             expected,
             ordered: Duration::ZERO,
             begun: None,
+            shaken: false,
             busy_before: Duration::ZERO,
             wall_ms: 0,
             surroundings: Surroundings::default(),
@@ -74,6 +86,12 @@ impl Flight {
             variant: self.spec.variant.to_string(),
             size: self.spec.size.0,
             span_ns: self.span.as_nanos() as u64,
+            rest_ns: match self.spec.setting.before {
+                Before::Rested(ms) => u64::from(ms) * 1_000_000,
+                _ => 0,
+            },
+            pace: self.spec.setting.pace,
+            partner: self.spec.partner,
             cases: self
                 .spec
                 .seeds
@@ -98,6 +116,12 @@ impl Flight {
         if report.busy_ns > report.span_ns.saturating_add(1_000_000) {
             return Err(format!("a report of slice {} with more busy time than time", self.slice));
         }
+        if report.partner.as_ref().is_some_and(|p| p.busy_ns > report.span_ns.saturating_add(1_000_000)) {
+            return Err(format!("a report of slice {} with more busy time of its partner than time", self.slice));
+        }
+        if report.partner.is_some() != self.spec.partner.is_some() && report.cases.iter().any(|c| c.runs > 0) {
+            return Err(format!("a report of slice {} that knows another number of cpus than was ordered", self.slice));
+        }
         Ok(())
     }
 }
@@ -107,29 +131,35 @@ pub(super) struct Lane {
     pub cpu: Cpu,
     pub core: u32,
     pub worker: Worker,
+    /// Too hot for now, at this many °C.
+    pub hot: Option<f64>,
     pub planned: VecDeque<Spec>,
     pub urgent: VecDeque<Spec>,
     pub flights: VecDeque<Flight>,
     pub checking: Vec<(Flight, SliceReport)>,
     pub losses: u32,
     pub stopped: bool,
+    /// That its memory is not its node's has been told.
+    pub lacking_told: bool,
     /// Late, and the system has been asked after it.
     pub asked: bool,
     pub previous_kernel: Option<&'static str>,
 }
 
 impl Lane {
-    pub fn new(track: &Track) -> Lane {
+    pub fn new(post: &Post) -> Lane {
         Lane {
-            cpu: track.cpu,
-            core: track.core,
+            cpu: post.cpu,
+            core: post.core,
             worker: Worker::Down,
-            planned: track.slices.iter().cloned().collect(),
+            hot: None,
+            planned: VecDeque::new(),
             urgent: VecDeque::new(),
             flights: VecDeque::new(),
             checking: Vec::new(),
             losses: 0,
             stopped: false,
+            lacking_told: false,
             asked: false,
             previous_kernel: None,
         }
@@ -165,7 +195,7 @@ impl Lane {
             1 => self.under_way().is_some(),
             _ => false,
         };
-        self.worker == Worker::Up && room
+        self.worker == Worker::Up && self.hot.is_none() && room
     }
 
     /// When a slice that is ordered now will begin, by plan.
@@ -173,12 +203,26 @@ impl Lane {
         self.flights.iter().fold(now, |at, f| f.begun.unwrap_or(at) + f.span).max(now)
     }
 
-    /// The next slice and its span, when `left` is left for all of them.
+    /// The next planned slice and its span, when `left` is left for all of them.
     pub fn next(&mut self, left: Duration, longest: Duration) -> Option<(Spec, Duration)> {
-        let slices = (self.urgent.len() + self.planned.len()) as u32;
-        let spec = self.urgent.pop_front().or_else(|| self.planned.pop_front())?;
+        let weight = |spec: &Spec| match spec.span {
+            Span::Share(weight) => u64::from(weight.max(1)),
+            Span::Fixed(_) => 1,
+        };
+        let all: u64 = self.planned.iter().map(weight).sum();
+        let spec = self.planned.pop_front()?;
         let span = match spec.span {
-            Span::Share => (left / slices.max(1)).min(longest),
+            Span::Share(_) => left.mul_f64(weight(&spec) as f64 / all as f64).min(longest),
+            Span::Fixed(span) => span.min(left),
+        };
+        Some((spec, span))
+    }
+
+    /// The next slice that the judge asked for.
+    pub fn next_urgent(&mut self, left: Duration) -> Option<(Spec, Duration)> {
+        let spec = self.urgent.pop_front()?;
+        let span = match spec.span {
+            Span::Share(_) => left,
             Span::Fixed(span) => span.min(left),
         };
         Some((spec, span))
@@ -192,6 +236,7 @@ impl Lane {
         for flight in &mut self.flights {
             flight.ordered += held_up;
             flight.begun = flight.begun.map(|at| at + held_up);
+            flight.shaken = true;
         }
     }
 

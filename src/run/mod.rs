@@ -6,6 +6,8 @@ mod child;
 pub mod driver;
 pub mod fault;
 mod lane;
+pub mod pace;
+mod partner;
 pub mod pinning;
 pub mod protocol;
 mod records;

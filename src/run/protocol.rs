@@ -8,6 +8,7 @@ use serde::{Deserialize, Serialize};
 
 use super::fault::Fault;
 use super::pinning::Place;
+use crate::condition::Pace;
 use crate::host::Cpu;
 
 /// Longest line of the protocol in bytes: 64 cases of 256 words in hexadecimal are 262,144.
@@ -37,13 +38,30 @@ pub struct SliceOrder {
     pub variant: String,
     /// Footprint in KiB.
     pub size: u32,
-    /// How long, in nanoseconds.
+    /// How long, in nanoseconds, rest included.
     pub span_ns: u64,
+    /// Nothing is done for so long first, in nanoseconds.
+    #[serde(default, skip_serializing_if = "is_zero")]
+    pub rest_ns: u64,
+    /// How hard.
+    #[serde(default, skip_serializing_if = "is_full")]
+    pub pace: Pace,
+    /// The second cpu, for a kernel of two.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub partner: Option<Cpu>,
     /// Cases in the order in which they are run, each for an equal part of the span.
     pub cases: Vec<CaseOrder>,
     /// Made-up faults; only in a drill.
     #[serde(default, skip_serializing_if = "Vec::is_empty")]
     pub faults: Vec<Fault>,
+}
+
+fn is_zero(number: &u64) -> bool {
+    *number == 0
+}
+
+fn is_full(pace: &Pace) -> bool {
+    *pace == Pace::FULL
 }
 
 /// One case with its right answer.
@@ -63,6 +81,9 @@ pub enum Message {
     Ready {
         /// Where it is.
         place: Place,
+        /// What could not be had, if anything: memory of the cpu's own node.
+        #[serde(default, skip_serializing_if = "Option::is_none")]
+        lacking: Option<String>,
     },
     /// A slice has begun.
     Begun {
@@ -73,6 +94,11 @@ pub enum Message {
     Wrong(WrongOutput),
     /// A slice has ended.
     Ended(SliceReport),
+    /// The worker cannot be held on its cpu any more: that was taken offline, or out of what the process may use.
+    Unpinned {
+        /// Why.
+        why: String,
+    },
     /// A slice could not be run; no statement about the core.
     Refused {
         /// Slice number.
@@ -116,6 +142,21 @@ pub struct SliceReport {
     pub wrong_ms: Option<(u64, u64)>,
     /// Where the worker was before and after.
     pub places: (Place, Place),
+    /// The same of the second cpu's thread, and its processor time in nanoseconds.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub partner: Option<PartnerReport>,
+    /// Steps begun, and how many of them within 20 µs of their time.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub steps: Option<(u64, u64)>,
+}
+
+/// What the second cpu's thread says of itself.
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+pub struct PartnerReport {
+    /// Where it was before and after.
+    pub places: (Place, Place),
+    /// Processor time inside the kernel in nanoseconds.
+    pub busy_ns: u64,
 }
 
 /// What one case came to.
@@ -136,6 +177,8 @@ pub struct CaseReport {
 pub struct WorkerArgs {
     /// Logical cpu.
     pub cpu: Cpu,
+    /// Memory node to take memory from.
+    pub node: Option<u32>,
 }
 
 /// Writes one message and flushes.

@@ -2,8 +2,10 @@
 
 use super::lane::Flight;
 use super::protocol::{SliceReport, WrongOutput};
-use super::spec::{Opinion, Setup};
-use crate::event::{Assignment, FoldCheck, How, Intent, Lost, Mismatch, NoticedBy, Slice, Surroundings, WrongWord};
+use super::spec::{FRESH_FROM, Opinion, Setup};
+use crate::event::{
+    Assignment, FoldCheck, How, Intent, Lost, Mismatch, NoticedBy, Partner, Slice, Surroundings, WrongWord,
+};
 use crate::host::Cpu;
 
 /// A slice and where it was ordered.
@@ -26,6 +28,7 @@ impl About<'_> {
             kernel: f.spec.kernel.to_owned(),
             variant: f.spec.variant.to_string(),
             condition: f.condition.clone(),
+            partner: f.spec.partner,
         };
         Intent { job_id: self.setup.job_id, job: self.setup.job, wall_ms, assignments: vec![assignment] }
     }
@@ -71,6 +74,7 @@ impl About<'_> {
             noticed_by: NoticedBy::Fold,
             wrong_words: 0,
             words: Vec::new(),
+            partner: f.spec.partner,
             previous_kernel: None,
             neighbours,
             surroundings: f.surroundings,
@@ -103,6 +107,10 @@ impl About<'_> {
             checked_on: None,
             void: Some(why),
             surroundings,
+            partner: None,
+            next_seed: None,
+            steps: None,
+            counters: Vec::new(),
         }
     }
 
@@ -129,6 +137,18 @@ impl About<'_> {
             },
             checked_on: opinion.on,
             void,
+            partner: f.spec.partner.map(|cpu| Partner {
+                cpu,
+                core: self.setup.posts.iter().find(|p| p.cpu == cpu).map_or(cpu.0, |p| p.core),
+                busy_ns: report.partner.as_ref().map_or(0, |p| p.busy_ns),
+            }),
+            // a slice that ended early leaves the seeds that it did not come to for the next one
+            next_seed: f.spec.next_seed.map(|next| {
+                let tables = f.spec.seeds.iter().filter(|s| **s < FRESH_FROM).count() as u64;
+                let came_to = (report.cases.len() as u64).min(tables);
+                next.saturating_sub(tables - came_to)
+            }),
+            steps: report.steps,
             ..self.void(f.wall_ms, f.surroundings, String::new())
         }
     }
@@ -147,6 +167,7 @@ impl About<'_> {
             condition: f.condition.clone(),
             wall_ms,
             how,
+            partner: f.spec.partner,
         }
     }
 }

@@ -3,18 +3,23 @@
 use std::sync::Arc;
 use std::time::Duration;
 
-use kernels::{Case, Size, Variant};
+use kernels::{Case, Seed, Size, Variant};
 
 use super::fault::Fault;
 use super::protocol::{Message, Order};
+use crate::condition::{Level, Setting};
 use crate::event::{Ending, Event, How, Job, Purpose, Surroundings};
 use crate::host::Cpu;
+
+/// Seeds from here on are beyond every table: their cases were made for one job and are never used again.
+pub const FRESH_FROM: u64 = 1 << 47;
 
 /// How long a slice lasts.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Span {
-    /// An equal share of the time that is left for the slices that are left, at most [`Setup::longest`].
-    Share,
+    /// A share of the time that is left to the phase, by this weight among the slices that are left, at most
+    /// [`Setup::longest`].
+    Share(u32),
     /// This long, unless the window ends before.
     Fixed(Duration),
 }
@@ -30,9 +35,17 @@ pub struct Spec {
     pub variant: Variant,
     /// Footprint.
     pub size: Size,
-    /// Operand seeds, in order.
+    /// Operand seeds of the tables, in order.
     pub seeds: Vec<u64>,
-    /// How long.
+    /// Where the unit's row of table seeds goes on after the last of them.
+    pub next_seed: Option<u64>,
+    /// A case beyond the tables is added if one is ready.
+    pub fresh: bool,
+    /// The second cpu, for a kernel of two; nobody else may be using it.
+    pub partner: Option<Cpu>,
+    /// Who else is busy, how hard, and after what.
+    pub setting: Setting,
+    /// How long, rest included.
     pub span: Span,
     /// Made-up faults; only in a drill.
     pub faults: Vec<Fault>,
@@ -43,10 +56,29 @@ pub struct Spec {
 pub struct Track {
     /// Logical cpu.
     pub cpu: Cpu,
-    /// Physical core.
-    pub core: u32,
     /// Its slices in order.
     pub slices: Vec<Spec>,
+}
+
+/// A part of the job that ends for all cpus together; cpus without a track rest meanwhile.
+#[derive(Clone, Debug)]
+pub struct Phase {
+    /// Its weight in the time that is left, seconds by plan.
+    pub seconds: f64,
+    /// Work for confirmations may be put between its slices; otherwise it waits until the phase has ended, because
+    /// the condition speaks of what every cpu does.
+    pub open: bool,
+    /// The cpus with their work.
+    pub tracks: Vec<Track>,
+}
+
+/// A tested cpu.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Post {
+    /// Logical cpu.
+    pub cpu: Cpu,
+    /// Physical core.
+    pub core: u32,
 }
 
 /// A job for the supervisor.
@@ -64,10 +96,10 @@ pub struct Setup {
     pub grace: Duration,
     /// Workers of one cpu that may be lost before it is left alone.
     pub losses_borne: u32,
-    /// Who else is busy, and how hard, in words: `all steady 100%`.
-    pub arrangement: String,
-    /// The cpus with their work.
-    pub tracks: Vec<Track>,
+    /// The tested cpus.
+    pub posts: Vec<Post>,
+    /// Their work, phase by phase.
+    pub phases: Vec<Phase>,
 }
 
 /// Extra work that the judge asks for.
@@ -83,6 +115,16 @@ pub struct Request {
 pub trait Truth {
     /// The golden words of `case`.
     fn expected(&self, case: &Case) -> Option<Vec<u64>>;
+
+    /// A case beyond the tables for `cpu`, with words that another core computed; only if one is ready.
+    fn fresh(&mut self, _kernel: &'static str, _size: Size, _cpu: Cpu) -> Option<(Seed, Vec<u64>)> {
+        None
+    }
+
+    /// Where a footprint lies when `cpu` works under `setting`, if that is known.
+    fn level(&self, _size: Size, _cpu: Cpu, _setting: Setting) -> Option<Level> {
+        None
+    }
 }
 
 /// What the supervisor is told.
@@ -102,6 +144,12 @@ pub enum Input {
     Checked(Opinion),
     /// The judge wants more.
     Wanted(Vec<Request>),
+    /// A sensor of this cpu reads this many °C, above the limit: no work until it has cooled.
+    Hot(Cpu, f64),
+    /// It has cooled to this many °C.
+    Cooled(Cpu, f64),
+    /// The system has taken this cpu away.
+    TakenAway(Cpu, String),
     /// Somebody asked the job to end.
     Interrupt,
     /// A record could not be written: no further work may start.
@@ -132,6 +180,8 @@ pub struct FoldTask {
     pub slice: u64,
     /// Cpu of the slice.
     pub of: Cpu,
+    /// Its second cpu, whose opinion counts as little.
+    pub with: Option<Cpu>,
     /// Expected words, number of outputs folded, and the worker's fold, by case.
     pub cases: Vec<(Arc<Vec<u64>>, u64, u64)>,
 }
@@ -149,6 +199,8 @@ pub enum Action {
     Kill(Cpu),
     /// Have folds checked on another core.
     Check(FoldTask),
+    /// Work for two cpus that the judge asked for cannot be done.
+    CannotRun(Request),
     /// Record an event.
     Record(Event),
     /// All is over.

@@ -4,14 +4,19 @@
 //! Each cpu has at most two slices with its worker: the one under way and the next, so that a core never waits for
 //! the disk. An intent is recorded before each order. The shares of time are worked out when a slice is ordered, so
 //! lateness anywhere is made up by all later slices and the window ends on its budget.
+//!
+//! The work comes in phases that end for all cpus together, because a condition speaks of what the other cpus do. Work
+//! for confirmations is put between the slices of an open phase, where everybody is busy anyway, or waits for the
+//! end of the phase; what takes two cpus always waits.
 
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, VecDeque};
 use std::time::Duration;
 
 use super::lane::{Flight, Lane, Worker};
+use super::pinning::Place;
 use super::protocol::{Message, Order, SliceReport, WrongOutput};
 use super::records::About;
-use super::spec::{Action, FoldTask, Input, Now, Opinion, Pulse, Request, Setup, Truth};
+use super::spec::{Action, FoldTask, Input, Now, Opinion, Phase, Pulse, Request, Setup, Span, Spec, Track, Truth};
 use crate::event::{Ending, Event, How, Remark};
 use crate::host::Cpu;
 
@@ -34,6 +39,17 @@ pub struct Supervisor {
     setup: Setup,
     truth: Box<dyn Truth>,
     lanes: BTreeMap<Cpu, Lane>,
+    phases: VecDeque<Phase>,
+    /// The phase under way takes work for confirmations.
+    open: bool,
+    /// When the phase under way is to end.
+    phase_end: Duration,
+    /// How often, and how long in all, the program itself was held up.
+    held_ups: (u32, Duration),
+    /// Something was wrong in this phase: the judge may want more before the next one begins.
+    suspicion: bool,
+    /// Work for two cpus that the judge asked for.
+    together: VecDeque<Request>,
     next_slice: u64,
     ending: Option<(Ending, Duration)>,
     finished: bool,
@@ -44,11 +60,18 @@ pub struct Supervisor {
 impl Supervisor {
     /// A supervisor for one job; the first actions start the workers.
     pub fn new(setup: Setup, truth: Box<dyn Truth>) -> Supervisor {
-        let lanes = setup.tracks.iter().map(|t| (t.cpu, Lane::new(t))).collect();
+        let lanes = setup.posts.iter().map(|p| (p.cpu, Lane::new(p))).collect();
+        let phases = setup.phases.iter().cloned().collect();
         Supervisor {
             setup,
             truth,
             lanes,
+            phases,
+            open: false,
+            phase_end: Duration::ZERO,
+            held_ups: (0, Duration::ZERO),
+            suspicion: false,
+            together: VecDeque::new(),
             next_slice: 0,
             ending: None,
             finished: false,
@@ -60,6 +83,7 @@ impl Supervisor {
     /// Starts every worker.
     pub fn begin(&mut self, now: Now) -> Vec<Action> {
         self.last_input = now.at;
+        self.next_phase(now);
         for lane in self.lanes.values_mut() {
             lane.worker = Worker::Starting(now.at);
             self.actions.push(Action::Start(lane.cpu));
@@ -88,6 +112,15 @@ impl Supervisor {
             Input::Felt(cpu, pulse) => self.felt(now, cpu, pulse),
             Input::Checked(opinion) => self.checked(now, opinion),
             Input::Wanted(requests) => self.wanted(requests),
+            Input::Hot(cpu, celsius) => self.hot(now, cpu, celsius),
+            Input::Cooled(cpu, celsius) => {
+                if let Some(lane) = self.lanes.get_mut(&cpu)
+                    && lane.hot.take().is_some()
+                {
+                    self.remark(now, format!("cpu {cpu} goes on: it has cooled to {celsius:.1} °C"));
+                }
+            }
+            Input::TakenAway(cpu, why) => self.taken_away(now, cpu, &why),
             Input::Interrupt => self.halt(now, Ending::Signal),
             Input::DiskFailed => self.halt(now, Ending::Failed),
             Input::Tick => {}
@@ -105,14 +138,15 @@ impl Supervisor {
 
     /// Part of the job that is over, by time or by slices, whichever is further: for a progress bar.
     pub fn progress(&self, at: Duration) -> f64 {
-        let planned: usize = self.setup.tracks.iter().map(|t| t.slices.len()).sum();
+        let planned: usize = self.setup.phases.iter().flat_map(|p| &p.tracks).map(|t| t.slices.len()).sum();
         let by_slices = 1.0 - self.slices_left() as f64 / planned.max(1) as f64;
         by_slices.max(at.as_secs_f64() / self.setup.budget.as_secs_f64()).clamp(0.0, 1.0)
     }
 
     /// Slices that are still to come.
     pub fn slices_left(&self) -> usize {
-        self.lanes.values().map(|l| l.planned.len() + l.urgent.len() + l.flights.len()).sum()
+        let later: usize = self.phases.iter().flat_map(|p| &p.tracks).map(|t| t.slices.len()).sum();
+        later + self.lanes.values().map(|l| l.planned.len() + l.urgent.len() + l.flights.len()).sum::<usize>()
     }
 
     fn remark(&mut self, now: Now, text: String) {
@@ -123,9 +157,14 @@ impl Supervisor {
     fn said(&mut self, now: Now, cpu: Cpu, message: Message) {
         let Some(lane) = self.lanes.get_mut(&cpu) else { return };
         match message {
-            Message::Ready { place } => {
+            Message::Ready { place, lacking } => {
                 if place.is_only(cpu) {
                     lane.worker = Worker::Up;
+                    if let Some(why) = lacking
+                        && !std::mem::replace(&mut lane.lacking_told, true)
+                    {
+                        self.remark(now, format!("cpu {cpu}: {why}"));
+                    }
                 } else {
                     let how =
                         How::NotPinned(format!("asked for cpu {cpu}, is on cpu {} of {:?}", place.cpu, place.mask));
@@ -148,10 +187,10 @@ impl Supervisor {
                 if let Some(flight) = lane.take_flight(slice, now.at) {
                     self.close_void(now, cpu, &flight, format!("refused by the worker: {why}"));
                 } else {
-                    self.lose(now, cpu, How::NotPinned(why));
-                    self.actions.push(Action::Kill(cpu));
+                    self.babbled(now, cpu, format!("refused slice {slice}, which it was not ordered"));
                 }
             }
+            Message::Unpinned { why } => self.taken_away(now, cpu, &why),
         }
     }
 
@@ -177,6 +216,7 @@ impl Supervisor {
             );
             return self.remark(now, text);
         }
+        self.suspicion = true;
         let about = About { setup: &self.setup, cpu, core: lane.core, flight };
         let mismatch = about.mismatch(&wrong, lane.previous_kernel, neighbours, now.surroundings);
         self.actions.push(Action::Record(Event::Mismatch(mismatch)));
@@ -206,8 +246,9 @@ impl Supervisor {
             .zip(&flight.expected)
             .map(|(case, expected)| (expected.clone(), case.runs - case.wrong, case.fold))
             .collect();
+        let partner = flight.spec.partner;
         flight.surroundings = now.surroundings;
-        self.actions.push(Action::Check(FoldTask { slice: report.slice, of: cpu, cases }));
+        self.actions.push(Action::Check(FoldTask { slice: report.slice, of: cpu, with: partner, cases }));
         lane.checking.push((flight, report));
     }
 
@@ -215,14 +256,20 @@ impl Supervisor {
         let Some(lane) = self.lanes.get_mut(&opinion.of) else { return };
         let Some(index) = lane.checking.iter().position(|(f, _)| f.slice == opinion.slice) else { return };
         let (flight, report) = lane.checking.remove(index);
-        let void = [&report.places.0, &report.places.1].iter().find(|p| !p.is_only(lane.cpu)).map(|p| {
-            format!("the worker was on cpu {} with mask {:?} instead of cpu {} alone", p.cpu, p.mask, lane.cpu)
-        });
+        let places = |of: Cpu, places: &(Place, Place)| {
+            [&places.0, &places.1]
+                .into_iter()
+                .find(|p| !p.is_only(of))
+                .map(|p| format!("the worker was on cpu {} with mask {:?} instead of cpu {of} alone", p.cpu, p.mask))
+        };
+        let second = flight.spec.partner.zip(report.partner.as_ref());
+        let void = places(lane.cpu, &report.places).or_else(|| places(second?.0, &second?.1.places));
         let core = lane.core;
         if let Some(text) = &opinion.remark {
             self.remark(now, text.clone());
         }
         if void.is_none() {
+            self.suspicion |= !opinion.wrong.is_empty();
             for &position in &opinion.wrong {
                 self.folded_wrong(&flight, &report, core, position, opinion.of);
             }
@@ -257,6 +304,7 @@ impl Supervisor {
     /// Records the loss of a worker against its core, and settles every intent it had.
     fn lose(&mut self, now: Now, cpu: Cpu, how: How) {
         let ending = self.ending.is_some();
+        self.suspicion = true;
         let Some(lane) = self.lanes.get_mut(&cpu) else { return };
         lane.losses += 1;
         lane.worker = if lane.losses >= self.setup.losses_borne || ending { Worker::GivenUp } else { Worker::Down };
@@ -281,7 +329,9 @@ impl Supervisor {
 
     fn wanted(&mut self, requests: Vec<Request>) {
         for Request { cpu, spec } in requests {
-            if let Some(lane) = self.lanes.get_mut(&cpu) {
+            if spec.partner.is_some() {
+                self.together.push_back(Request { cpu, spec });
+            } else if let Some(lane) = self.lanes.get_mut(&cpu) {
                 lane.urgent.push_back(spec);
             }
         }
@@ -292,6 +342,8 @@ impl Supervisor {
             return;
         }
         self.ending = Some((ending, now.at));
+        self.phases.clear();
+        self.together.clear();
         for lane in self.lanes.values_mut() {
             lane.planned.clear();
             lane.urgent.clear();
@@ -309,16 +361,31 @@ impl Supervisor {
     /// Deadlines, restarts, new orders, the end.
     fn advance(&mut self, now: Now) {
         let cpus: Vec<Cpu> = self.lanes.keys().copied().collect();
-        for cpu in cpus {
+        for &cpu in &cpus {
             self.overdue(now, cpu);
             self.restart(now, cpu);
             while self.order_next(now, cpu) {}
+        }
+        while self.ending.is_none() && self.phase_over(now) {
+            let between = self.interlude(now);
+            if !between && !self.next_phase(now) {
+                break;
+            }
+            for &cpu in &cpus {
+                self.restart(now, cpu);
+                while !between && self.order_next(now, cpu) {}
+            }
+            if between {
+                break;
+            }
         }
         if now.at >= self.setup.budget {
             self.halt(now, Ending::Budget);
         }
         let still = self.lanes.values().any(Lane::busy);
-        let nothing_left = self.lanes.values().all(|l| l.worker == Worker::GivenUp || l.idle());
+        let nothing_left = self.phases.is_empty()
+            && self.together.is_empty()
+            && self.lanes.values().all(|l| l.worker == Worker::GivenUp || l.idle());
         let (ending, forced) = match self.ending {
             Some((ending, since)) => (Some(ending), now.at >= since + HALT_WITHIN),
             None if nothing_left => (Some(Ending::Done), false),
@@ -345,6 +412,12 @@ impl Supervisor {
             for (flight, _) in unchecked {
                 self.close_void(now, cpu, &flight, "the second opinion came too late".to_owned());
             }
+        }
+        if let (times @ 2.., all) = self.held_ups {
+            self.remark(
+                now,
+                format!("the program itself was held up {times} times, {:.1} s in all", all.as_secs_f64()),
+            );
         }
         self.finished = true;
         self.actions.push(Action::Finish(ending));
@@ -374,10 +447,12 @@ impl Supervisor {
     fn felt(&mut self, now: Now, cpu: Cpu, pulse: Option<Pulse>) {
         let Some(flight) = self.lanes.get(&cpu).filter(|l| l.asked).and_then(|l| l.flights.front()) else { return };
         let waited = now.at.saturating_sub(flight.begun.unwrap_or(flight.ordered));
-        let starved = pulse.is_some_and(|p| {
-            let ran = p.busy.saturating_sub(flight.busy_before);
-            p.waiting && ran.as_secs_f64() < STARVED_BELOW * waited.as_secs_f64()
-        });
+        // where the whole program was held up meanwhile, a virtual cpu may have been as well, and nothing in it tells
+        let starved = flight.shaken
+            || pulse.is_some_and(|p| {
+                let ran = p.busy.saturating_sub(flight.busy_before);
+                p.waiting && ran.as_secs_f64() < STARVED_BELOW * waited.as_secs_f64()
+            });
         self.lose(now, cpu, if starved { How::Starved } else { How::Hung });
         self.actions.push(Action::Kill(cpu));
     }
@@ -389,16 +464,22 @@ impl Supervisor {
             return;
         }
         self.lanes.values_mut().for_each(|l| l.forgive(silence));
-        let text = format!(
-            "the program itself was held up for {:.1} s; no worker's lateness in it counts",
-            silence.as_secs_f64()
-        );
-        self.remark(now, text);
+        self.held_ups.0 += 1;
+        self.held_ups.1 += silence;
+        if self.held_ups.0 == 1 {
+            let text = format!(
+                "the program itself was held up for {:.1} s; no worker's lateness in it counts",
+                silence.as_secs_f64()
+            );
+            self.remark(now, text);
+        }
     }
 
     fn restart(&mut self, now: Now, cpu: Cpu) {
         let Some(lane) = self.lanes.get_mut(&cpu) else { return };
-        let wanted = !lane.planned.is_empty() || !lane.urgent.is_empty();
+        let wanted = !lane.planned.is_empty()
+            || !lane.urgent.is_empty()
+            || self.together.iter().any(|r| r.cpu == cpu || r.spec.partner == Some(cpu));
         if lane.worker == Worker::Down && wanted && self.ending.is_none() {
             lane.worker = Worker::Starting(now.at);
             self.actions.push(Action::Start(cpu));
@@ -408,29 +489,39 @@ impl Supervisor {
     /// Orders one more slice if the cpu can take one; true if it did.
     fn order_next(&mut self, now: Now, cpu: Cpu) -> bool {
         let end = self.setup.budget.saturating_sub(TAIL);
-        let longest = self.setup.longest;
+        let (phase_end, open, longest) = (self.phase_end.min(end), self.open, self.setup.longest);
         let Some(lane) = self.lanes.get_mut(&cpu) else { return false };
         if self.ending.is_some() || !lane.can_take() {
             return false;
         }
         let start = lane.free_at(now.at);
-        let left = end.saturating_sub(start);
+        let urgent = open && !lane.urgent.is_empty();
+        let left = if urgent { end } else { phase_end }.saturating_sub(start);
         if left < SHORTEST {
+            // what the judge wants ends with the job, what was planned with its phase
+            if urgent {
+                lane.urgent.clear();
+            }
             lane.planned.clear();
-            lane.urgent.clear();
             return false;
         }
-        let Some((spec, span)) = lane.next(left, longest) else { return false };
+        let next = if urgent { lane.next_urgent(left) } else { lane.next(left, longest) };
+        let Some((spec, span)) = next else { return false };
+        self.order(now, cpu, spec, span)
+    }
+
+    /// Orders `spec` on `cpu`; true if something was done about it.
+    fn order(&mut self, now: Now, cpu: Cpu, spec: Spec, span: Duration) -> bool {
         let slice = self.next_slice;
         self.next_slice += 1;
-        let condition = format!("{} {}KiB", self.setup.arrangement, spec.size.0);
-        let mut flight = match Flight::new(slice, spec, span, condition, self.truth.as_ref()) {
+        let mut flight = match Flight::new(slice, cpu, spec, span, self.truth.as_mut()) {
             Ok(flight) => flight,
             Err(why) => {
                 self.remark(now, why);
                 return true;
             }
         };
+        let Some(lane) = self.lanes.get_mut(&cpu) else { return false };
         flight.ordered = now.at;
         let order = flight.order();
         let intent = About { setup: &self.setup, cpu, core: lane.core, flight: &flight }.intent(now.wall_ms);
@@ -438,5 +529,152 @@ impl Supervisor {
         self.actions.push(Action::Record(Event::Intent(intent)));
         self.actions.push(Action::Order(cpu, Order::Slice(order)));
         true
+    }
+
+    /// Whether every cpu has done its part of the phase under way.
+    fn phase_over(&mut self, now: Now) -> bool {
+        let late = now.at >= self.phase_end;
+        for lane in self.lanes.values_mut() {
+            // a cpu that could not work meanwhile does not hold the others up
+            if late && (lane.worker != Worker::Up || lane.hot.is_some()) || lane.worker == Worker::GivenUp {
+                lane.planned.clear();
+            }
+        }
+        self.lanes
+            .values()
+            .all(|l| l.flights.is_empty() && l.planned.is_empty() && (!self.suspicion || l.checking.is_empty()))
+    }
+
+    /// Between two phases: does what the judge asked for, each cpu by itself and then pairs; true while there is any.
+    fn interlude(&mut self, now: Now) -> bool {
+        let end = self.setup.budget.saturating_sub(TAIL);
+        let left = end.saturating_sub(now.at);
+        if left < SHORTEST {
+            self.together.clear();
+            self.lanes.values_mut().for_each(|l| l.urgent.clear());
+            return false;
+        }
+        self.open = false;
+        let able = |lane: &Lane| lane.worker == Worker::Up && lane.hot.is_none();
+        let gone = |lane: Option<&Lane>| lane.is_none_or(|l| l.worker == Worker::GivenUp || l.hot.is_some());
+        let cpus: Vec<Cpu> = self.lanes.keys().copied().collect();
+        let mut any = false;
+        for cpu in cpus {
+            let Some(lane) = self.lanes.get_mut(&cpu) else { continue };
+            if lane.worker == Worker::GivenUp || lane.hot.is_some() {
+                lane.urgent.clear();
+            }
+            any |= !lane.urgent.is_empty();
+            if able(lane)
+                && lane.can_take()
+                && let Some((spec, span)) = lane.next_urgent(left)
+            {
+                self.order(now, cpu, spec, span);
+            }
+        }
+        if any {
+            return true;
+        }
+        while let Some(request) = self.together.front() {
+            let Some(partner) = request.spec.partner else { break };
+            let (first, second) = (self.lanes.get(&request.cpu), self.lanes.get(&partner));
+            if gone(first) || gone(second) {
+                let Some(request) = self.together.pop_front() else { break };
+                let text = format!(
+                    "cpus {} and {partner} could not be run together for a confirmation: one of them has no worker",
+                    request.cpu
+                );
+                self.remark(now, text);
+                self.actions.push(Action::CannotRun(request));
+                continue;
+            }
+            if first.is_some_and(able) && second.is_some_and(able) {
+                let Some(Request { cpu, spec }) = self.together.pop_front() else { break };
+                let span = match spec.span {
+                    Span::Fixed(span) => span.min(left),
+                    Span::Share(_) => left,
+                };
+                self.order(now, cpu, spec, span);
+            }
+            return true;
+        }
+        false
+    }
+
+    /// Gives every cpu its part of the next phase; false when there is none.
+    fn next_phase(&mut self, now: Now) -> bool {
+        let end = self.setup.budget.saturating_sub(TAIL);
+        let all: f64 = self.phases.iter().map(|p| p.seconds.max(0.0)).sum();
+        let Some(phase) = self.phases.pop_front() else {
+            self.open = true;
+            self.phase_end = end;
+            return false;
+        };
+        let share = if all > 0.0 { (phase.seconds / all).clamp(0.0, 1.0) } else { 1.0 };
+        self.phase_end = now.at + end.saturating_sub(now.at).mul_f64(share);
+        self.open = phase.open;
+        self.suspicion = false;
+        for Track { cpu, slices } in phase.tracks {
+            if let Some(lane) = self.lanes.get_mut(&cpu)
+                && lane.worker != Worker::GivenUp
+                && lane.hot.is_none()
+            {
+                // a partner that is not there takes the slice with it
+                lane.planned = slices.into();
+            }
+        }
+        self.without_partners(now);
+        true
+    }
+
+    /// Takes out what needs a second cpu that has no worker any more.
+    fn without_partners(&mut self, now: Now) {
+        let gone: Vec<Cpu> =
+            self.lanes.values().filter(|l| l.worker == Worker::GivenUp || l.hot.is_some()).map(|l| l.cpu).collect();
+        let mut left_out = 0;
+        for lane in self.lanes.values_mut() {
+            let before = lane.planned.len();
+            lane.planned.retain(|spec| spec.partner.is_none_or(|p| !gone.contains(&p)));
+            left_out += before - lane.planned.len();
+        }
+        if left_out > 0 {
+            self.remark(now, format!("{left_out} slices of kernels for two cpus left out: a partner is not available"));
+        }
+    }
+
+    /// A cpu above its limit gets no work until it has cooled; what it is doing ends now.
+    fn hot(&mut self, now: Now, cpu: Cpu, celsius: f64) {
+        let Some(lane) = self.lanes.get_mut(&cpu) else { return };
+        if lane.hot.replace(celsius).is_some() || self.ending.is_some() {
+            return;
+        }
+        if let Some(last) = lane.flights.back() {
+            self.actions.push(Action::Order(cpu, Order::Halt { upto: last.slice }));
+        }
+        // work that it does for another cpu ends as well
+        for other in self.lanes.values() {
+            if let Some(flight) = other.flights.iter().find(|f| f.spec.partner == Some(cpu)) {
+                self.actions.push(Action::Order(other.cpu, Order::Halt { upto: flight.slice }));
+            }
+        }
+        self.remark(now, format!("cpu {cpu} pauses: {celsius:.1} °C is above the limit"));
+    }
+
+    /// The system has taken a cpu away: what it was doing is void, it gets nothing more, and nothing is held against it.
+    fn taken_away(&mut self, now: Now, cpu: Cpu, why: &str) {
+        let Some(lane) = self.lanes.get_mut(&cpu) else { return };
+        if lane.worker == Worker::GivenUp {
+            return;
+        }
+        lane.worker = Worker::GivenUp;
+        lane.planned.clear();
+        lane.urgent.clear();
+        let flights = std::mem::take(&mut lane.flights);
+        self.actions.push(Action::Kill(cpu));
+        for flight in flights {
+            self.close_void(now, cpu, &flight, "its cpu was taken away".to_owned());
+        }
+        self.without_partners(now);
+        self.remark(now, format!("cpu {cpu} is skipped from now on: {why}"));
     }
 }

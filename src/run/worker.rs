@@ -10,12 +10,15 @@ use std::sync::mpsc::{Receiver, channel};
 use std::time::{Duration, Instant, SystemTime, UNIX_EPOCH};
 
 use kernels::compare::{Fold, first_difference};
-use kernels::{Case, Kernel, Seed, Size, Variant, catalogue, isa};
+use kernels::{Case, Kernel, Roles, Seed, Size, Variant, catalogue, isa};
 
 use super::fault::{Armed, Fault};
+use super::pace::{Metronome, monotonic};
+use super::partner::together;
 use super::pinning::{self, Place, thread_time};
 use super::protocol::{
-    CaseReport, Message, Order, Received, SliceOrder, SliceReport, WorkerArgs, WrongOutput, receive, send,
+    CaseReport, Message, Order, PartnerReport, Received, SliceOrder, SliceReport, WorkerArgs, WrongOutput, receive,
+    send,
 };
 use crate::host::Cpu;
 
@@ -33,8 +36,7 @@ static GIVEN_UP: AtomicU64 = AtomicU64::new(0);
 pub fn main(args: WorkerArgs) -> ExitCode {
     let mut out = io::stdout().lock();
     if let Err(why) = pinning::pin(args.cpu) {
-        let refused = Message::Refused { slice: 0, why: format!("cannot be held on cpu {}: {why}", args.cpu) };
-        let _ = send(&mut out, &refused);
+        let _ = send(&mut out, &Message::Unpinned { why: format!("no thread can be held on it: {why}") });
         return ExitCode::from(3);
     }
     // whoever signals the whole group means the supervisor, which lets this worker report first; that its input ends is
@@ -48,7 +50,12 @@ pub fn main(args: WorkerArgs) -> ExitCode {
     }
     let orders = listen();
     let Ok(place) = pinning::place() else { return ExitCode::from(3) };
-    if send(&mut out, &Message::Ready { place }).is_err() {
+    let lacking = args.node.and_then(|node| {
+        let why = pinning::take_memory_from(node).err()?;
+        Some(format!("memory of node {node} cannot be asked for: {why}"))
+    });
+    pinning::wake_exactly();
+    if send(&mut out, &Message::Ready { place, lacking }).is_err() {
         return ExitCode::from(3);
     }
     for order in orders {
@@ -93,7 +100,15 @@ fn unix_ms() -> u64 {
 fn work(out: &mut impl Write, cpu: Cpu, order: &SliceOrder) -> io::Result<()> {
     send(out, &Message::Begun { slice: order.slice })?;
     let slice = order.slice;
-    let outcome = pinning::place().map_err(|e| e.to_string()).and_then(|before| Bench::new(order, before));
+    let mut before = pinning::place();
+    if before.as_ref().is_ok_and(|place| !place.is_only(cpu)) {
+        // somebody moved this worker while it had no work, or during the slice before, which is void
+        if let Err(why) = pinning::pin(cpu) {
+            return send(out, &Message::Unpinned { why: format!("no thread can be held on it any more: {why}") });
+        }
+        before = pinning::place();
+    }
+    let outcome = before.map_err(|e| e.to_string()).and_then(|before| Bench::new(order, before));
     let mut bench = match outcome {
         Ok(bench) => bench,
         Err(why) => return send(out, &Message::Refused { slice, why }),
@@ -118,6 +133,8 @@ struct Bench<'a> {
     before: Place,
     wrong_seen: u64,
     wrong_ms: Option<(u64, u64)>,
+    beat: Metronome,
+    partner: Option<PartnerReport>,
 }
 
 impl<'a> Bench<'a> {
@@ -137,13 +154,31 @@ impl<'a> Bench<'a> {
                 expected.ok_or_else(|| format!("expected words of seed {} are not {words} words", case.seed))?,
             ));
         }
-        Ok(Bench { order, kernel, proof, cases, faults: order.faults.clone(), before, wrong_seen: 0, wrong_ms: None })
+        if (kernel.cpus() == 2) != order.partner.is_some() {
+            return Err(format!("{} takes {} cpu(s), which is not what was ordered", order.kernel, kernel.cpus()));
+        }
+        Ok(Bench {
+            order,
+            kernel,
+            proof,
+            cases,
+            faults: order.faults.clone(),
+            before,
+            wrong_seen: 0,
+            wrong_ms: None,
+            beat: Metronome::new(order.pace, order.slice),
+            partner: None,
+        })
     }
 
     /// The outer error is a broken pipe, the inner one a slice that cannot be reported.
     fn run(&mut self, out: &mut impl Write) -> io::Result<Result<SliceReport, String>> {
+        let begun = Instant::now();
+        rest(Duration::from_nanos(self.order.rest_ns.min(self.order.span_ns)), self.order.slice);
+        // the duty is that of the work, not of the rest before it
+        self.beat = Metronome::new(self.order.pace, self.order.slice);
         let start = Instant::now();
-        let span = Duration::from_nanos(self.order.span_ns);
+        let span = Duration::from_nanos(self.order.span_ns.saturating_sub(self.order.rest_ns));
         let mut armed: Vec<Armed> = self.faults.drain(..).map(Armed::new).collect();
         let mut reports = Vec::with_capacity(self.cases.len());
         let mut busy = Duration::ZERO;
@@ -155,9 +190,13 @@ impl<'a> Bench<'a> {
             let left = span.saturating_sub(start.elapsed());
             let until = start.elapsed() + left / (self.cases.len() as u32 + 1);
             let dwell = Dwell { seed, expected: &expected, start, until, span };
-            let (report, time) = self.dwell(out, &dwell, &mut armed)?;
-            reports.push(report);
-            busy += time;
+            match self.dwell(out, &dwell, &mut armed)? {
+                Ok((report, time)) => {
+                    reports.push(report);
+                    busy += time;
+                }
+                Err(why) => return Ok(Err(why)),
+            }
         }
         let after = match pinning::place() {
             Ok(place) => place,
@@ -165,57 +204,98 @@ impl<'a> Bench<'a> {
         };
         Ok(Ok(SliceReport {
             slice: self.order.slice,
-            span_ns: start.elapsed().as_nanos() as u64,
+            span_ns: begun.elapsed().as_nanos() as u64,
             busy_ns: busy.as_nanos() as u64,
             cases: reports,
             wrong_ms: self.wrong_ms,
             places: (self.before.clone(), after),
+            partner: self.partner.take(),
+            steps: self.beat.steps(),
         }))
     }
 
-    fn dwell(
+    /// The outer error is a broken pipe, the inner one a second cpu that could not be had.
+    fn dwell(&mut self, out: &mut impl Write, dwell: &Dwell, armed: &mut [Armed]) -> io::Result<Result<Dwelt, String>> {
+        let case = Case { kernel: self.kernel.id(), seed: Seed(dwell.seed), size: Size(self.order.size) };
+        match (self.kernel.prepare(&case, self.proof), self.order.partner) {
+            (Roles::One(mut ready), _) => self.runs(out, dwell, armed, &mut |words| ready.run(words)).map(Ok),
+            (Roles::Two(roles), Some(cpu)) => {
+                let words = dwell.expected.len();
+                let (dwelt, seen) = match together(roles, cpu, words, |run| self.runs(out, dwell, armed, run)) {
+                    Ok(both) => both,
+                    Err(why) => return Ok(Err(why)),
+                };
+                // one thread a case: the first place of the first and the last of the last bracket the slice
+                self.partner = Some(match self.partner.take() {
+                    Some(all) => PartnerReport {
+                        places: (worse(all.places.0, seen.places.0, cpu), worse(all.places.1, seen.places.1, cpu)),
+                        busy_ns: all.busy_ns + seen.busy_ns,
+                    },
+                    None => seen,
+                });
+                dwelt.map(Ok)
+            }
+            (Roles::Two(_), None) => Ok(Err(format!("{} takes two cpus", case.kernel))),
+        }
+    }
+
+    /// Runs one case again and again until its time is over.
+    fn runs(
         &mut self,
         out: &mut impl Write,
         dwell: &Dwell,
         armed: &mut [Armed],
-    ) -> io::Result<(CaseReport, Duration)> {
-        let case = Case { kernel: self.kernel.id(), seed: Seed(dwell.seed), size: Size(self.order.size) };
-        let mut ready = self.kernel.prepare(&case, self.proof).alone();
+        run: &mut dyn FnMut(&mut [u64]),
+    ) -> io::Result<Dwelt> {
         let mut output = vec![0u64; dwell.expected.len()];
         let mut report = CaseReport { seed: dwell.seed, runs: 0, wrong: 0, fold: 0 };
         let mut fold = Fold::default();
         let mut batch = 1u64;
+        let look_every = self.beat.stretch().map_or(CLOCK_EVERY, |stretch| CLOCK_EVERY.min(stretch / 4));
+        let until = monotonic() + dwell.until.saturating_sub(dwell.start.elapsed()).as_nanos() as u64;
+        let slice = self.order.slice;
         let begun = thread_time();
-        loop {
-            let batch_start = Instant::now();
-            for _ in 0..batch {
-                ready.run(&mut output);
-                let blind = !armed.is_empty() && {
-                    let elapsed = dwell.start.elapsed().as_secs_f64() / dwell.span.as_secs_f64();
-                    armed.iter_mut().fold(false, |blind, a| a.apply(&mut output, elapsed).blind | blind)
-                };
-                match first_difference(&output, dwell.expected) {
-                    Some(index) if !blind => {
-                        report.wrong += 1;
-                        self.wrong(out, dwell, report.runs, index, &output)?;
+        let mut worked = self.beat.worked;
+        'case: while let Some(end) = self.beat.next(until, || given_up(slice)) {
+            loop {
+                let batch_start = Instant::now();
+                for _ in 0..batch {
+                    run(&mut output);
+                    let blind = !armed.is_empty() && {
+                        let elapsed = dwell.start.elapsed().as_secs_f64() / dwell.span.as_secs_f64();
+                        armed.iter_mut().fold(false, |blind, a| a.apply(&mut output, elapsed).blind | blind)
+                    };
+                    match first_difference(&output, dwell.expected) {
+                        Some(index) if !blind => {
+                            report.wrong += 1;
+                            self.wrong(out, dwell, report.runs, index, &output)?;
+                        }
+                        _ => fold.push(&output),
                     }
-                    _ => fold.push(&output),
+                    report.runs += 1;
                 }
-                report.runs += 1;
-            }
-            if dwell.start.elapsed() >= dwell.until || given_up(self.order.slice) {
-                break;
-            }
-            // long enough not to be spent on the clock, short enough to end on time
-            let took = batch_start.elapsed();
-            if took < CLOCK_EVERY / 2 {
-                batch *= 2;
-            } else if took > CLOCK_EVERY * 2 && batch > 1 {
-                batch /= 2;
+                if dwell.start.elapsed() >= dwell.until || given_up(slice) {
+                    self.beat.ended();
+                    break 'case;
+                }
+                // long enough not to be spent on the clock, short enough to end on time
+                let took = batch_start.elapsed();
+                if took < look_every / 2 {
+                    batch *= 2;
+                } else if took > look_every * 2 && batch > 1 {
+                    batch /= 2;
+                }
+                if !self.beat.full() && monotonic() >= end {
+                    self.beat.ended();
+                    break;
+                }
             }
         }
         report.fold = fold.0;
-        Ok((report, thread_time().saturating_sub(begun)))
+        worked = self.beat.worked - worked;
+        let busy = thread_time().saturating_sub(begun);
+        // what is spun between stretches is no work
+        Ok((report, if self.beat.full() { busy } else { busy.min(Duration::from_nanos(worked)) }))
     }
 
     fn wrong(&mut self, out: &mut impl Write, dwell: &Dwell, run: u64, first: usize, output: &[u64]) -> io::Result<()> {
@@ -236,6 +316,26 @@ impl<'a> Bench<'a> {
             place: pinning::place()?,
         });
         send(out, &message)
+    }
+}
+
+/// What one case came to, and the processor time inside the kernel.
+type Dwelt = (CaseReport, Duration);
+
+/// The one of two places that is not `cpu` alone, if there is one.
+fn worse(a: Place, b: Place, cpu: Cpu) -> Place {
+    if a.is_only(cpu) { b } else { a }
+}
+
+/// Does nothing for so long, unless the slice is given up.
+fn rest(span: Duration, slice: u64) {
+    let end = Instant::now() + span;
+    while !given_up(slice) {
+        let left = end.saturating_duration_since(Instant::now());
+        if left.is_zero() {
+            return;
+        }
+        std::thread::sleep(left.min(Duration::from_millis(20)));
     }
 }
 

@@ -80,6 +80,7 @@ fn intent(job_id: u64, slices: &[u64]) -> Event {
         kernel: "fma.chain64".into(),
         variant: "avx2".into(),
         condition: "solo".into(),
+        partner: None,
     });
     Event::Intent(Intent { job_id, job: Job::Window, wall_ms: 2_000, assignments: assignments.collect() })
 }
@@ -108,6 +109,10 @@ fn slice(job_id: u64, number: u64) -> Slice {
         checked_on: Some(Cpu(0)),
         void: None,
         surroundings: Surroundings { celsius: Some(61.3), khz: None },
+        partner: None,
+        next_seed: None,
+        steps: None,
+        counters: Vec::new(),
     }
 }
 
@@ -132,6 +137,7 @@ fn mismatch(job_id: u64, number: u64) -> Event {
         previous_kernel: Some("cipher.aes".into()),
         neighbours: vec![(Cpu(0), "idle".into())],
         surroundings: Surroundings::default(),
+        partner: None,
     })
 }
 
@@ -147,6 +153,7 @@ fn lost(job_id: u64, number: u64) -> Event {
         condition: "solo".into(),
         wall_ms: 4_000,
         how: How::Babbled("\u{0}\u{7f}\u{2028}".into()),
+        partner: None,
     })
 }
 

@@ -1,6 +1,7 @@
 //! The one integration binary, one file a topic.
 
 mod bad_input;
+mod confirming;
 mod host;
 mod house;
 mod ledger;

@@ -296,3 +296,135 @@ fn a_supervisor_that_was_held_up_blames_nobody() {
     assert_eq!((output.status.code(), &report["verdict"]), (Some(0), &Value::from("clear")), "{report:#}");
     assert!(report["remarks"].to_string().contains("held up"), "{report:#}");
 }
+
+/// A host of two cpus with one temperature and one memory controller, as files.
+fn made_up_host(scratch: &Scratch) -> impl Fn(&str, &str) {
+    let root = scratch.path().join("root");
+    let put = move |path: &str, text: &str| {
+        let path = root.join(path);
+        std::fs::create_dir_all(path.parent().unwrap()).unwrap();
+        // as a whole, so that no reader sees half of it
+        let next = path.with_extension("next");
+        std::fs::write(&next, text).unwrap();
+        std::fs::rename(next, path).unwrap();
+    };
+    let all = cpus();
+    let list: Vec<String> = all.iter().map(u32::to_string).collect();
+    put("sys/devices/system/cpu/online", &format!("{}\n", list.join(",")));
+    for cpu in all {
+        let folder = format!("sys/devices/system/cpu/cpu{cpu}/topology");
+        put(&format!("{folder}/core_id"), &format!("{cpu}\n"));
+        put(&format!("{folder}/physical_package_id"), "0\n");
+        put(&format!("{folder}/thread_siblings_list"), &format!("{cpu}\n"));
+    }
+    put("sys/class/hwmon/hwmon0/name", "k10temp\n");
+    put("sys/class/hwmon/hwmon0/temp1_label", "Tctl\n");
+    put("sys/class/hwmon/hwmon0/temp1_input", "50000\n");
+    put("sys/devices/system/edac/mc/mc0/ce_count", "0\n");
+    put("sys/devices/system/edac/mc/mc0/ue_count", "0\n");
+    put
+}
+
+#[test]
+fn a_hot_cpu_pauses_and_goes_on_and_a_corrected_error_is_attached() {
+    let _turn = alone();
+    let scratch = Scratch::new("hot");
+    let put = made_up_host(&scratch);
+    let root = scratch.path().join("root").display().to_string();
+    let child = window(&scratch, "9s", &["--root", &root, "--max-temp", "80"]);
+    worker(&child, cpus()[0]);
+    std::thread::sleep(Duration::from_millis(1500));
+    put("sys/class/hwmon/hwmon0/temp1_input", "91500\n");
+    put("sys/devices/system/edac/mc/mc0/ce_count", "3\n");
+    std::thread::sleep(Duration::from_millis(2500));
+    put("sys/class/hwmon/hwmon0/temp1_input", "60000\n");
+    let output = child.wait_with_output().unwrap();
+    let report = json(&output);
+    let remarks = report["remarks"].to_string();
+    for cpu in cpus() {
+        assert!(remarks.contains(&format!("cpu {cpu} pauses: 91.5 °C")), "{report:#}");
+        assert!(remarks.contains(&format!("cpu {cpu} goes on: it has cooled to 60.0 °C")), "{report:#}");
+    }
+    assert!(remarks.contains("corrected memory errors at mc0: 3 more"), "{report:#}");
+    assert_eq!((output.status.code(), &report["verdict"]), (Some(0), &Value::from("clear")), "{report:#}");
+    assert!(report["wall_s"].as_f64() < Some(10.0));
+}
+
+#[test]
+fn a_cpu_that_goes_offline_is_recorded_and_skipped() {
+    let _turn = alone();
+    let cpus = cpus();
+    let [first, .., last] = cpus.as_slice() else { return };
+    let scratch = Scratch::new("offline");
+    let put = made_up_host(&scratch);
+    let root = scratch.path().join("root").display().to_string();
+    let child = window(&scratch, "6s", &["--root", &root]);
+    worker(&child, *last);
+    std::thread::sleep(Duration::from_millis(1500));
+    let left: Vec<String> = cpus.iter().filter(|c| *c != last).map(u32::to_string).collect();
+    put("sys/devices/system/cpu/online", &format!("{}\n", left.join(",")));
+    let output = child.wait_with_output().unwrap();
+    let report = json(&output);
+    assert!(report["remarks"].to_string().contains(&format!("cpu {last} is skipped from now on: it went offline")));
+    assert_eq!((output.status.code(), &report["lost"]), (Some(0), &Value::Array(vec![])), "{report:#}");
+    let busy = |cpu: u32| {
+        let cores = report["cores"].as_array().unwrap();
+        cores.iter().find(|c| c["cpu"] == cpu).unwrap()["busy_s"].as_f64().unwrap()
+    };
+    assert!(busy(*first) > busy(*last) && busy(*last) > 0.0, "{report:#}");
+}
+
+#[test]
+fn a_plan_is_explained_without_a_ledger_and_coverage_grows_with_windows() {
+    let _turn = alone();
+    let scratch = Scratch::new("explain");
+    let ledger = scratch.ledger();
+    let explained = run(&["window", "--explain", "--budget", "10m", "--format", "json", "--ledger", &ledger]);
+    let plan = json(&explained);
+    assert_eq!((explained.status.code(), &plan["schema"]), (Some(0), &Value::from("proofhouse/plan/1")));
+    assert!(!Path::new(&ledger).exists(), "explaining a plan leaves nothing behind");
+    assert_eq!(plan["grid"]["cells"], plan["grid"]["uncovered_before"]);
+    assert!(plan["phases"].as_array().unwrap().len() > 10);
+    let coverage = |args: &[&str]| {
+        let mut all = vec!["ledger", "coverage", "--format", "json", "--ledger", &ledger];
+        all.extend(args);
+        run(&all)
+    };
+    assert_eq!(coverage(&[]).status.code(), Some(3), "there is no ledger yet");
+    json(&window(&scratch, "3s", &[]).wait_with_output().unwrap());
+    let covered = json(&coverage(&["--kernels", "integer.*"]));
+    assert_eq!(covered["schema"], "proofhouse/coverage/1");
+    let plain = if cpus().len() > 1 { "all steady 100%" } else { "solo steady 100%" };
+    let sweep = &covered["conditions"][plain];
+    assert_eq!(sweep["cells"], sweep["covered"], "{:#}", covered["conditions"]);
+    assert_eq!(sweep["overdue"], 0);
+    let text = String::from_utf8(run(&["window", "--explain", "--budget", "1s", "--ledger", &ledger]).stdout).unwrap();
+    assert!(text.contains("Nothing was run"), "{text}");
+}
+
+#[test]
+fn every_pace_keeps_its_duty_and_is_on_record() {
+    let _turn = alone();
+    let scratch = Scratch::new("paces");
+    let ledger = scratch.ledger();
+    let output = run(&[
+        "window",
+        "--budget",
+        "20s",
+        "--format",
+        "json",
+        "--ledger",
+        &ledger,
+        "--kernels",
+        "integer.multiply",
+        "--kernels",
+        "integer.divide",
+    ]);
+    let report = json(&output);
+    assert_eq!(output.status.code(), Some(0), "{report:#}");
+    let seen: Vec<&str> =
+        report["conditions"].as_array().unwrap().iter().map(|c| c["condition"].as_str().unwrap()).collect();
+    for word in ["steady 50%", "burst 10us/10us", "step 2ms aligned", "step 2ms dithered", "rested 300ms", "solo"] {
+        assert!(cpus().len() == 1 || seen.iter().any(|s| s.contains(word)), "{word} in {seen:?}");
+    }
+}
