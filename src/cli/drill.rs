@@ -77,7 +77,7 @@ pub fn run(args: &DrillArgs, start: Instant) -> Result<Exit, Error> {
         grace: GRACE,
         losses_borne: u32::MAX,
         posts: seats.iter().map(|&(cpu, core)| Post { cpu, core }).collect(),
-        phases: vec![Phase { seconds: budget.as_secs_f64(), open: true, tracks }],
+        phases: vec![Phase { seconds: budget.as_secs_f64(), open: true, whole: true, tracks }],
     };
     let truths = Truths { live: None, site: Site::of(&host, &seats) };
     let outcome = driver::run(start, setup, Box::new(truths), all, &mut bench)

@@ -233,5 +233,6 @@ fn phase(planned: &plan::Phase) -> Phase {
     };
     let tracks =
         planned.tracks.iter().map(|(cpu, slices)| Track { cpu: *cpu, slices: slices.iter().map(spec).collect() });
-    Phase { seconds: planned.seconds, open: planned.open, tracks: tracks.collect() }
+    let whole = planned.aim == plan::Aim::Sweep;
+    Phase { seconds: planned.seconds, open: planned.open, whole, tracks: tracks.collect() }
 }

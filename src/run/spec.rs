@@ -68,6 +68,8 @@ pub struct Phase {
     /// Work for confirmations may be put between its slices; otherwise it waits until the phase has ended, because
     /// the condition speaks of what every cpu does.
     pub open: bool,
+    /// It goes on past its time until everything in it was run, at the cost of later phases.
+    pub whole: bool,
     /// The cpus with their work.
     pub tracks: Vec<Track>,
 }

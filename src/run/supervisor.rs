@@ -42,6 +42,8 @@ pub struct Supervisor {
     phases: VecDeque<Phase>,
     /// The phase under way takes work for confirmations.
     open: bool,
+    /// The phase under way goes on past its end until everything in it was run.
+    whole: bool,
     /// When the phase under way is to end.
     phase_end: Duration,
     /// How often, and how long in all, the program itself was held up.
@@ -68,6 +70,7 @@ impl Supervisor {
             lanes,
             phases,
             open: false,
+            whole: false,
             phase_end: Duration::ZERO,
             held_ups: (0, Duration::ZERO),
             suspicion: false,
@@ -496,7 +499,12 @@ impl Supervisor {
         }
         let start = lane.free_at(now.at);
         let urgent = open && !lane.urgent.is_empty();
-        let left = if urgent { end } else { phase_end }.saturating_sub(start);
+        let mut left = if urgent { end } else { phase_end }.saturating_sub(start);
+        if self.whole && !urgent {
+            // a sweep that others held up is made up for by the phases behind it
+            let least = SHORTEST * 2 * lane.planned.len() as u32;
+            left = left.max(least).min(end.saturating_sub(start));
+        }
         if left < SHORTEST {
             // what the judge wants ends with the job, what was planned with its phase
             if urgent {
@@ -536,7 +544,9 @@ impl Supervisor {
         let late = now.at >= self.phase_end;
         for lane in self.lanes.values_mut() {
             // a cpu that could not work meanwhile does not hold the others up
-            if late && (lane.worker != Worker::Up || lane.hot.is_some()) || lane.worker == Worker::GivenUp {
+            if late && !self.whole && (lane.worker != Worker::Up || lane.hot.is_some())
+                || lane.worker == Worker::GivenUp
+            {
                 lane.planned.clear();
             }
         }
@@ -610,16 +620,16 @@ impl Supervisor {
             self.phase_end = end;
             return false;
         };
+        self.whole = phase.whole;
         let share = if all > 0.0 { (phase.seconds / all).clamp(0.0, 1.0) } else { 1.0 };
         self.phase_end = now.at + end.saturating_sub(now.at).mul_f64(share);
         self.open = phase.open;
         self.suspicion = false;
         for Track { cpu, slices } in phase.tracks {
+            // one that is too hot may cool while the phase lasts
             if let Some(lane) = self.lanes.get_mut(&cpu)
                 && lane.worker != Worker::GivenUp
-                && lane.hot.is_none()
             {
-                // a partner that is not there takes the slice with it
                 lane.planned = slices.into();
             }
         }

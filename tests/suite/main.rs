@@ -6,6 +6,7 @@ mod host;
 mod house;
 mod ledger;
 mod outside;
+mod pacing;
 mod running;
 mod statistics;
 mod statistics_edges;

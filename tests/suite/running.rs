@@ -401,30 +401,3 @@ fn a_plan_is_explained_without_a_ledger_and_coverage_grows_with_windows() {
     let text = String::from_utf8(run(&["window", "--explain", "--budget", "1s", "--ledger", &ledger]).stdout).unwrap();
     assert!(text.contains("Nothing was run"), "{text}");
 }
-
-#[test]
-fn every_pace_keeps_its_duty_and_is_on_record() {
-    let _turn = alone();
-    let scratch = Scratch::new("paces");
-    let ledger = scratch.ledger();
-    let output = run(&[
-        "window",
-        "--budget",
-        "20s",
-        "--format",
-        "json",
-        "--ledger",
-        &ledger,
-        "--kernels",
-        "integer.multiply",
-        "--kernels",
-        "integer.divide",
-    ]);
-    let report = json(&output);
-    assert_eq!(output.status.code(), Some(0), "{report:#}");
-    let seen: Vec<&str> =
-        report["conditions"].as_array().unwrap().iter().map(|c| c["condition"].as_str().unwrap()).collect();
-    for word in ["steady 50%", "burst 10us/10us", "step 2ms aligned", "step 2ms dithered", "rested 300ms", "solo"] {
-        assert!(cpus().len() == 1 || seen.iter().any(|s| s.contains(word)), "{word} in {seen:?}");
-    }
-}

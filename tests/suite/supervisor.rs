@@ -412,7 +412,8 @@ fn world(seed: u64) -> World {
                     Track { cpu: Cpu(c), slices: (0..8).map(|n| Spec { partner, ..spec(n) }).collect() }
                 })
                 .collect();
-            Phase { seconds: 1.0 + (rng.next_u64() % 5) as f64, open, tracks }
+            let whole = rng.next_u64().is_multiple_of(2);
+            Phase { seconds: 1.0 + (rng.next_u64() % 5) as f64, open, whole, tracks }
         })
         .collect();
     let setup = Setup {
