@@ -4,11 +4,18 @@ The first line of the answer names the libraries. Each witness module has `words
 (unsigned 64-bit) and `LIBRARIES`, the modules it leans on.
 """
 
-import importlib
 import sys
-from importlib.metadata import version
 
-sys.path.insert(0, __file__.rsplit("/", 1)[0])
+HERE = __file__.rsplit("/", 1)[0]
+sys.path[:] = [path for path in sys.path if path not in ("", HERE)]
+
+import importlib  # noqa: E402
+import string  # noqa: E402
+from importlib.metadata import version  # noqa: E402
+
+# a family is called like this module of the standard library: let it hold the family's witnesses as well
+string.__path__ = [HERE + "/string"]
+sys.path.insert(0, HERE)
 
 
 def main() -> int:

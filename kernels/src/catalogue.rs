@@ -13,6 +13,8 @@ pub static KERNELS: &[&dyn Kernel] = &[
     &crate::float::powcast::PowCast,
     &crate::fma::chain32::Chain32,
     &crate::fma::chain64::Chain64,
+    &crate::fma::matmul32::Matmul32,
+    &crate::fma::matmul64::Matmul64,
     &crate::vector::shuffle::Shuffle,
     &crate::vector::gather::Gather,
     &crate::cipher::aes::Aes,

@@ -29,6 +29,8 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("float.powcast", float::powcast::words),
     ("fma.chain32", fma::chain32::words),
     ("fma.chain64", fma::chain64::words),
+    ("fma.matmul32", fma::matmul32::words),
+    ("fma.matmul64", fma::matmul64::words),
     ("vector.shuffle", vector::shuffle::words),
     ("vector.gather", vector::gather::words),
     ("cipher.aes", cipher::aes::words),

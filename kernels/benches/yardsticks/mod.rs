@@ -16,6 +16,8 @@ mod float_powcast;
 mod fma_chain32;
 mod fma_chain64;
 mod fma_common;
+mod fma_matmul32;
+mod fma_matmul64;
 mod integer_carry;
 mod integer_divide;
 mod integer_multiply;
@@ -53,6 +55,8 @@ pub fn all() -> Vec<Yardstick> {
         float_powcast::yardsticks(),
         fma_chain32::yardsticks(),
         fma_chain64::yardsticks(),
+        fma_matmul32::yardsticks(),
+        fma_matmul64::yardsticks(),
         vector_shuffle::yardsticks(),
         vector_gather::yardsticks(),
         cipher_aes::yardsticks(),

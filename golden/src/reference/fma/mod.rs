@@ -3,3 +3,6 @@
 pub mod chain32;
 pub mod chain64;
 mod common_chain;
+mod common_matmul;
+pub mod matmul32;
+pub mod matmul64;
