@@ -10,5 +10,7 @@ mod host;
 mod inputs;
 #[path = "softfloat/mpfr.rs"]
 mod mpfr;
+#[path = "softfloat/narrow.rs"]
+mod narrow;
 #[path = "softfloat/published.rs"]
 mod published;

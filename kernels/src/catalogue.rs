@@ -15,6 +15,7 @@ pub static KERNELS: &[&dyn Kernel] = &[
     &crate::fma::chain64::Chain64,
     &crate::fma::matmul32::Matmul32,
     &crate::fma::matmul64::Matmul64,
+    &crate::fma::mixed::Mixed,
     &crate::vector::shuffle::Shuffle,
     &crate::vector::gather::Gather,
     &crate::cipher::aes::Aes,

@@ -31,6 +31,7 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("fma.chain64", fma::chain64::words),
     ("fma.matmul32", fma::matmul32::words),
     ("fma.matmul64", fma::matmul64::words),
+    ("fma.mixed", fma::mixed::words),
     ("vector.shuffle", vector::shuffle::words),
     ("vector.gather", vector::gather::words),
     ("cipher.aes", cipher::aes::words),

@@ -18,6 +18,7 @@ mod fma_chain64;
 mod fma_common;
 mod fma_matmul32;
 mod fma_matmul64;
+mod fma_mixed;
 mod integer_carry;
 mod integer_divide;
 mod integer_multiply;
@@ -57,6 +58,7 @@ pub fn all() -> Vec<Yardstick> {
         fma_chain64::yardsticks(),
         fma_matmul32::yardsticks(),
         fma_matmul64::yardsticks(),
+        fma_mixed::yardsticks(),
         vector_shuffle::yardsticks(),
         vector_gather::yardsticks(),
         cipher_aes::yardsticks(),

@@ -8,3 +8,4 @@ mod common_operands;
 mod common_walk;
 pub mod matmul32;
 pub mod matmul64;
+pub mod mixed;

@@ -10,6 +10,7 @@ mod f64;
 pub mod fma;
 pub mod fma32;
 pub mod fma64;
+pub mod mixed;
 
 pub use arithmetic::Arithmetic;
 pub use convert::Convert;

@@ -6,3 +6,4 @@ mod common_chain;
 mod common_matmul;
 pub mod matmul32;
 pub mod matmul64;
+pub mod mixed;
