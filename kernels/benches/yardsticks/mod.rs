@@ -13,6 +13,7 @@ mod float_chain64;
 mod float_common;
 mod float_convert;
 mod float_powcast;
+mod float_x87;
 mod fma_chain32;
 mod fma_chain64;
 mod fma_common;
@@ -54,6 +55,7 @@ pub fn all() -> Vec<Yardstick> {
         float_chain64::yardsticks(),
         float_convert::yardsticks(),
         float_powcast::yardsticks(),
+        float_x87::yardsticks(),
         fma_chain32::yardsticks(),
         fma_chain64::yardsticks(),
         fma_matmul32::yardsticks(),

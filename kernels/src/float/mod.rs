@@ -9,3 +9,4 @@ mod common_pair;
 mod common_persistence;
 pub mod convert;
 pub mod powcast;
+pub mod x87;

@@ -5,3 +5,4 @@ pub mod chain64;
 mod common_chain;
 pub mod convert;
 pub mod powcast;
+pub mod x87;
