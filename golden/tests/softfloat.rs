@@ -4,6 +4,8 @@
 
 #[path = "softfloat/apfloat.rs"]
 mod apfloat;
+#[path = "softfloat/elementary.rs"]
+mod elementary;
 #[path = "softfloat/host.rs"]
 mod host;
 #[path = "softfloat/inputs.rs"]

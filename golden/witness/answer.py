@@ -4,18 +4,11 @@ The first line of the answer names the libraries. Each witness module has `words
 (unsigned 64-bit) and `LIBRARIES`, the modules it leans on.
 """
 
+import standard  # noqa: F401, I001
+
+import importlib
 import sys
-
-HERE = __file__.rsplit("/", 1)[0]
-sys.path[:] = [path for path in sys.path if path not in ("", HERE)]
-
-import importlib  # noqa: E402
-import string  # noqa: E402
-from importlib.metadata import version  # noqa: E402
-
-# a family is called like this module of the standard library: let it hold the family's witnesses as well
-string.__path__ = [HERE + "/string"]
-sys.path.insert(0, HERE)
+from importlib.metadata import version
 
 
 def main() -> int:

@@ -6,6 +6,8 @@ binary32 with each of the lower halves below, next to numbers and midpoints of b
 NaN operands left out. A NaN result is the canonical one (sign clear, top fraction bit set).
 """
 
+import standard  # noqa: F401, I001
+
 import hashlib
 
 import ml_dtypes

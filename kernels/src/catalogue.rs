@@ -11,6 +11,7 @@ pub static KERNELS: &[&dyn Kernel] = &[
     &crate::float::chain64::Chain64,
     &crate::float::convert::Conversions,
     &crate::float::powcast::PowCast,
+    &crate::float::elementary::Elementary,
     &crate::float::x87::X87,
     &crate::fma::chain32::Chain32,
     &crate::fma::chain64::Chain64,

@@ -27,6 +27,7 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("float.chain64", float::chain64::words),
     ("float.convert", float::convert::words),
     ("float.powcast", float::powcast::words),
+    ("float.elementary", float::elementary::words),
     ("float.x87", float::x87::words),
     ("fma.chain32", fma::chain32::words),
     ("fma.chain64", fma::chain64::words),

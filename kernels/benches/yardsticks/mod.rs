@@ -12,6 +12,7 @@ mod float_chain32;
 mod float_chain64;
 mod float_common;
 mod float_convert;
+mod float_elementary;
 mod float_powcast;
 mod float_x87;
 mod fma_chain32;
@@ -55,6 +56,7 @@ pub fn all() -> Vec<Yardstick> {
         float_chain64::yardsticks(),
         float_convert::yardsticks(),
         float_powcast::yardsticks(),
+        float_elementary::yardsticks(),
         float_x87::yardsticks(),
         fma_chain32::yardsticks(),
         fma_chain64::yardsticks(),

@@ -4,6 +4,7 @@
 //! with a [`crate::isa::Proof`], and that is where the instructions end up. No method changes rounding or flushing modes.
 
 pub mod arithmetic;
+pub mod bits;
 pub mod convert;
 mod f32;
 mod f64;
