@@ -6,6 +6,8 @@
 mod apfloat;
 #[path = "softfloat/elementary.rs"]
 mod elementary;
+#[path = "softfloat/extended.rs"]
+mod extended;
 #[path = "softfloat/host.rs"]
 mod host;
 #[path = "softfloat/inputs.rs"]
