@@ -4,11 +4,17 @@
 
 #[path = "softfloat/apfloat.rs"]
 mod apfloat;
+#[path = "softfloat/elementary.rs"]
+mod elementary;
+#[path = "softfloat/extended.rs"]
+mod extended;
 #[path = "softfloat/host.rs"]
 mod host;
 #[path = "softfloat/inputs.rs"]
 mod inputs;
 #[path = "softfloat/mpfr.rs"]
 mod mpfr;
+#[path = "softfloat/narrow.rs"]
+mod narrow;
 #[path = "softfloat/published.rs"]
 mod published;

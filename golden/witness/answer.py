@@ -4,11 +4,11 @@ The first line of the answer names the libraries. Each witness module has `words
 (unsigned 64-bit) and `LIBRARIES`, the modules it leans on.
 """
 
+import standard  # noqa: F401, I001
+
 import importlib
 import sys
 from importlib.metadata import version
-
-sys.path.insert(0, __file__.rsplit("/", 1)[0])
 
 
 def main() -> int:

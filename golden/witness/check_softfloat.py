@@ -5,14 +5,14 @@ operands, result, flags (the bits of softfloat's `Flags`). Tininess is judged af
 unbounded exponent to tell, once with the format's own for the result. Exactness is judged by exact rationals.
 """
 
+import standard  # noqa: F401, I001
+
 import random
-import sys
 from fractions import Fraction
 
 import gmpy2
 
-sys.path.insert(0, __file__.rsplit("/", 1)[0])
-from float.common_ieee import BFLOAT16, BINARY16, BINARY32, BINARY64  # noqa: E402
+from float.common_ieee import BFLOAT16, BINARY16, BINARY32, BINARY64
 
 FORMATS = {"binary16": BINARY16, "bfloat16": BFLOAT16, "binary32": BINARY32, "binary64": BINARY64}
 ROUNDINGS = {

@@ -20,6 +20,8 @@ const RATIOS: &[(&str, Option<Variant>, f64)] = &[
     ("integer.multiply", None, 0.90),
     ("fma.chain32", Some(Variant::Avx2), 0.95),
     ("fma.chain64", Some(Variant::Avx2), 0.95),
+    ("fma.matmul32", Some(Variant::Avx2), 0.85),
+    ("fma.matmul64", Some(Variant::Avx2), 0.85),
     ("cipher.aes", None, 0.90),
     ("memory.copy", None, 0.90),
 ];

@@ -16,6 +16,7 @@
 mod add;
 mod convert;
 mod divide;
+pub mod extended;
 mod multiply;
 mod parts;
 

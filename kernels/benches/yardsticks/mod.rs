@@ -12,10 +12,15 @@ mod float_chain32;
 mod float_chain64;
 mod float_common;
 mod float_convert;
+mod float_elementary;
 mod float_powcast;
+mod float_x87;
 mod fma_chain32;
 mod fma_chain64;
 mod fma_common;
+mod fma_matmul32;
+mod fma_matmul64;
+mod fma_mixed;
 mod integer_carry;
 mod integer_divide;
 mod integer_multiply;
@@ -51,8 +56,13 @@ pub fn all() -> Vec<Yardstick> {
         float_chain64::yardsticks(),
         float_convert::yardsticks(),
         float_powcast::yardsticks(),
+        float_elementary::yardsticks(),
+        float_x87::yardsticks(),
         fma_chain32::yardsticks(),
         fma_chain64::yardsticks(),
+        fma_matmul32::yardsticks(),
+        fma_matmul64::yardsticks(),
+        fma_mixed::yardsticks(),
         vector_shuffle::yardsticks(),
         vector_gather::yardsticks(),
         cipher_aes::yardsticks(),

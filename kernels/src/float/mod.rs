@@ -8,4 +8,6 @@ mod common_pair;
 #[cfg(test)]
 mod common_persistence;
 pub mod convert;
+pub mod elementary;
 pub mod powcast;
+pub mod x87;

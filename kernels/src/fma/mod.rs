@@ -3,5 +3,9 @@
 
 pub mod chain32;
 pub mod chain64;
+mod common_matmul;
 mod common_operands;
 mod common_walk;
+pub mod matmul32;
+pub mod matmul64;
+pub mod mixed;

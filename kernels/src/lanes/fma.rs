@@ -14,6 +14,12 @@ pub trait FmaLanes: Copy {
     /// `from` is valid for reading `WIDTH` scalars, and the CPU has the instructions of the register.
     unsafe fn load(from: *const Self::Scalar) -> Self;
 
+    /// One scalar in every lane.
+    ///
+    /// # Safety
+    /// `from` is valid for reading one scalar, and the CPU has the instructions of the register.
+    unsafe fn broadcast(from: *const Self::Scalar) -> Self;
+
     /// Writes `WIDTH` lanes, aligned or not.
     ///
     /// # Safety
@@ -42,7 +48,7 @@ pub trait FmaLanes: Copy {
 /// Implements [`FmaLanes`] for a vector type by its intrinsics.
 macro_rules! fma_lanes {
     (
-        $register:ty, $scalar:ty, $width:literal, $load:path, $store:path,
+        $register:ty, $scalar:ty, $width:literal, $load:path, $broadcast:path, $store:path,
         |$x:ident, $factor:ident, $addend:ident| $fma:expr,
         $zero:expr, |$a:ident, $b:ident| $add:expr
     ) => {
@@ -54,6 +60,12 @@ macro_rules! fma_lanes {
             unsafe fn load(from: *const $scalar) -> Self {
                 // SAFETY: the caller vouches for the pointer and for the instruction
                 unsafe { $load(from) }
+            }
+
+            #[inline(always)]
+            unsafe fn broadcast(from: *const $scalar) -> Self {
+                // SAFETY: the caller vouches for the pointer and for the instruction
+                unsafe { $broadcast(from.read()) }
             }
 
             #[inline(always)]
@@ -97,6 +109,12 @@ macro_rules! fma_scalar {
 
             #[inline(always)]
             unsafe fn load(from: *const $scalar) -> Self {
+                // SAFETY: the caller vouches for the pointer
+                unsafe { from.read() }
+            }
+
+            #[inline(always)]
+            unsafe fn broadcast(from: *const $scalar) -> Self {
                 // SAFETY: the caller vouches for the pointer
                 unsafe { from.read() }
             }

@@ -4,12 +4,14 @@
 //! with a [`crate::isa::Proof`], and that is where the instructions end up. No method changes rounding or flushing modes.
 
 pub mod arithmetic;
+pub mod bits;
 pub mod convert;
 mod f32;
 mod f64;
 pub mod fma;
 pub mod fma32;
 pub mod fma64;
+pub mod mixed;
 
 pub use arithmetic::Arithmetic;
 pub use convert::Convert;
