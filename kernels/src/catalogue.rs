@@ -7,6 +7,8 @@ pub static KERNELS: &[&dyn Kernel] = &[
     &crate::integer::multiply::Multiply,
     &crate::integer::divide::Divide,
     &crate::integer::carry::Carry,
+    &crate::checksum::crc32c::Crc32c,
+    &crate::checksum::clmul::Clmul,
     &crate::float::chain32::Chain32,
     &crate::float::chain64::Chain64,
     &crate::float::convert::Conversions,

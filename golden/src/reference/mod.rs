@@ -23,6 +23,8 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("integer.multiply", integer::multiply::words),
     ("integer.divide", integer::divide::words),
     ("integer.carry", integer::carry::words),
+    ("checksum.crc32c", checksum::crc32c::words),
+    ("checksum.clmul", checksum::clmul::words),
     ("float.chain32", float::chain32::words),
     ("float.chain64", float::chain64::words),
     ("float.convert", float::convert::words),

@@ -6,6 +6,8 @@
 use kernels::{Variant, catalogue, isa};
 
 mod cache_walk;
+mod checksum_clmul;
+mod checksum_crc32c;
 mod cipher_aes;
 mod cipher_sha256;
 mod float_chain32;
@@ -47,6 +49,8 @@ pub fn all() -> Vec<Yardstick> {
         integer_multiply::yardsticks(),
         integer_divide::yardsticks(),
         integer_carry::yardsticks(),
+        checksum_crc32c::yardsticks(),
+        checksum_clmul::yardsticks(),
         float_chain32::yardsticks(),
         float_chain64::yardsticks(),
         float_convert::yardsticks(),
