@@ -18,9 +18,13 @@ mod float_powcast;
 mod fma_chain32;
 mod fma_chain64;
 mod fma_common;
+mod integer_bignum;
+mod integer_bits;
 mod integer_carry;
+mod integer_compress;
 mod integer_divide;
 mod integer_multiply;
+mod integer_sort;
 mod memory_copy;
 mod memory_march;
 mod vector_gather;
@@ -49,6 +53,10 @@ pub fn all() -> Vec<Yardstick> {
         integer_multiply::yardsticks(),
         integer_divide::yardsticks(),
         integer_carry::yardsticks(),
+        integer_bits::yardsticks(),
+        integer_bignum::yardsticks(),
+        integer_compress::yardsticks(),
+        integer_sort::yardsticks(),
         checksum_crc32c::yardsticks(),
         checksum_clmul::yardsticks(),
         float_chain32::yardsticks(),

@@ -44,7 +44,7 @@ impl Flags {
 }
 
 /// The operations; a count k is below 64 everywhere. What each is may be read at the head of `bits.rs`.
-pub trait Bits {
+pub(super) trait Bits {
     #[inline(always)]
     fn shl(a: u64, k: u32) -> u64 {
         a << k
@@ -361,7 +361,7 @@ pub trait Bits {
 
 /// The definitions as they stand.
 #[cfg(not(target_arch = "x86_64"))]
-pub struct Plain;
+pub(super) struct Plain;
 
 #[cfg(not(target_arch = "x86_64"))]
 impl Bits for Plain {}

@@ -8,10 +8,10 @@ use std::arch::asm;
 use super::common_bits::Bits;
 
 /// Instructions of the x86-64 baseline.
-pub struct Baseline;
+pub(super) struct Baseline;
 
 /// BMI1, BMI2, LZCNT, POPCNT, MOVBE and CMPXCHG16B as well; LAHF and SAHF, which every 64-bit CPU with BMI2 has.
-pub struct Extended;
+pub(super) struct Extended;
 
 /// One instruction on one register and the count register; the result is cut to `$cut`.
 macro_rules! counted {
@@ -53,14 +53,14 @@ macro_rules! binary {
 
 /// One instruction on one register with the carry flag set before and read afterwards.
 macro_rules! carried {
-    ($($name:ident($b:ty, $($place:tt)*) $line:literal),* $(,)?) => {$(
+    ($($name:ident($b:ident: $type:ty, $($operand:tt)*) $line:literal),* $(,)?) => {$(
         #[inline(always)]
-        fn $name(mut a: u64, b: $b, carry: bool) -> (u64, bool) {
+        fn $name(mut a: u64, $b: $type, carry: bool) -> (u64, bool) {
             let mut flag = u8::from(carry);
             // SAFETY: baseline instructions on the registers named
             unsafe {
                 // all ones added to 1 carry, to 0 they do not
-                asm!("add {flag}, 255", $line, "setc {flag}", a = inout(reg) a, $($place)* b as _, flag = inout(reg_byte) flag,
+                asm!("add {flag}, 255", $line, "setc {flag}", a = inout(reg) a, $($operand)*, flag = inout(reg_byte) flag,
                     options(pure, nomem, nostack));
             }
             (a, flag != 0)
@@ -88,10 +88,22 @@ macro_rules! tested {
 macro_rules! conditions {
     ($line:ident) => {
         concat!(
-            $line!("o", "0", "1"), $line!("no", "1", "2"), $line!("b", "2", "3"), $line!("ae", "3", "4"),
-            $line!("e", "4", "5"), $line!("ne", "5", "6"), $line!("be", "6", "7"), $line!("a", "7", "8"),
-            $line!("s", "8", "9"), $line!("ns", "9", "10"), $line!("p", "10", "11"), $line!("np", "11", "12"),
-            $line!("l", "12", "13"), $line!("ge", "13", "14"), $line!("le", "14", "15"), $line!("g", "15", "16")
+            $line!("o", "0", "1"),
+            $line!("no", "1", "2"),
+            $line!("b", "2", "3"),
+            $line!("ae", "3", "4"),
+            $line!("e", "4", "5"),
+            $line!("ne", "5", "6"),
+            $line!("be", "6", "7"),
+            $line!("a", "7", "8"),
+            $line!("s", "8", "9"),
+            $line!("ns", "9", "10"),
+            $line!("p", "10", "11"),
+            $line!("np", "11", "12"),
+            $line!("l", "12", "13"),
+            $line!("ge", "13", "14"),
+            $line!("le", "14", "15"),
+            $line!("g", "15", "16")
         )
     };
 }
@@ -142,10 +154,10 @@ macro_rules! common {
         }
 
         carried! {
-            rcl(u32, in("cl")) "rcl {a}, cl",
-            rcr(u32, in("cl")) "rcr {a}, cl",
-            adc(u64, b = in(reg)) "adc {a}, {b}",
-            sbb(u64, b = in(reg)) "sbb {a}, {b}",
+            rcl(k: u32, in("cl") k as u8) "rcl {a}, cl",
+            rcr(k: u32, in("cl") k as u8) "rcr {a}, cl",
+            adc(b: u64, b = in(reg) b) "adc {a}, {b}",
+            sbb(b: u64, b = in(reg) b) "sbb {a}, {b}",
         }
 
         tested! {
@@ -397,7 +409,9 @@ impl Bits for Extended {
     fn movbe(a: u64) -> u64 {
         let out: u64;
         // SAFETY: reads the word a; the instruction is of the set that the implementing type stands for
-        unsafe { asm!("movbe {out}, qword ptr [{a}]", a = in(reg) &raw const a, out = out(reg) out, options(pure, readonly, nostack)) };
+        unsafe {
+            asm!("movbe {out}, qword ptr [{a}]", a = in(reg) &raw const a, out = out(reg) out, options(pure, readonly, nostack))
+        };
         out
     }
 
