@@ -1,60 +1,58 @@
-//! The full-width product alone: a limb in a register times limbs in memory, nothing added up and nothing to wait for. What a
+//! The full-width product alone: a limb in a register times limbs in memory, nothing added up and nothing to wait for. What the
 //! multiplication of whole numbers can reach beside it, `scripts/ratio-bignum` measures with a library.
 
-use std::hint::black_box;
+use super::Yardstick;
 
-use kernels::Variant;
-
-use super::{Yardstick, available};
-
-const KERNEL: &str = "integer.bignum";
-const LIMBS: usize = 32;
-const ROUNDS: usize = 64;
-
-#[inline(always)]
-fn peak(limbs: &[u64; LIMBS]) {
-    let mut sums = [0u64; 4];
-    for round in 0..ROUNDS as u64 {
-        let m = black_box(u64::MAX - round);
-        for four in limbs.as_chunks::<4>().0 {
-            for (sum, limb) in sums.iter_mut().zip(four) {
-                let product = u128::from(*limb) * u128::from(m);
-                *sum ^= product as u64 ^ (product >> 64) as u64;
-            }
-        }
-    }
-    black_box(sums);
-}
-
-#[inline(never)]
-fn portable(limbs: &[u64; LIMBS]) {
-    peak(limbs);
+#[cfg(not(target_arch = "x86_64"))]
+pub fn yardsticks() -> Vec<Yardstick> {
+    Vec::new()
 }
 
 #[cfg(target_arch = "x86_64")]
-#[inline(never)]
-#[target_feature(enable = "bmi2")]
-fn avx2(limbs: &[u64; LIMBS]) {
-    peak(limbs);
+pub fn yardsticks() -> Vec<Yardstick> {
+    use kernels::Variant;
+    use kernels::isa::Feature;
+
+    let list =
+        |variant, run: fn()| Yardstick { kernel: "integer.bignum", variant, units: 8 * LOOPS, run: Box::new(run) };
+    let mut all = vec![list(Variant::Portable, by_mul)];
+    if Feature::Bmi2.present() {
+        all.push(list(Variant::Avx2, by_mulx));
+    }
+    all
 }
 
-/// See the file's head.
-pub fn yardsticks() -> Vec<Yardstick> {
-    let bare: &[(Variant, unsafe fn(&[u64; LIMBS]))] = &[
-        (Variant::Portable, portable),
-        #[cfg(target_arch = "x86_64")]
-        (Variant::Avx2, avx2),
-    ];
-    let limbs: [u64; LIMBS] = black_box(std::array::from_fn(|i| u64::MAX / (i as u64 + 1)));
-    bare.iter()
-        .copied()
-        .filter(|(variant, _)| available(KERNEL, *variant))
-        .map(|(variant, run)| Yardstick {
-            kernel: KERNEL,
-            variant,
-            units: (LIMBS * ROUNDS) as u64,
-            // SAFETY: listed only where every feature of the kernel's variant is present
-            run: Box::new(move || unsafe { run(black_box(&limbs)) }),
-        })
-        .collect()
+#[cfg(target_arch = "x86_64")]
+const LOOPS: u64 = 512;
+
+#[cfg(target_arch = "x86_64")]
+macro_rules! products {
+    ($name:ident, $before:literal, $product:literal) => {
+        fn $name() {
+            let limbs: [u64; 8] = std::hint::black_box(std::array::from_fn(|i| u64::MAX / (i as u64 + 1)));
+            let (low, high): (u64, u64);
+            // SAFETY: reads the eight limbs; the instructions are listed only where the CPU has them; the registers are named
+            unsafe {
+                std::arch::asm!(
+                    "2:",
+                    concat!($before, $product, " [{m}]\n", $before, $product, " [{m} + 8]\n"),
+                    concat!($before, $product, " [{m} + 16]\n", $before, $product, " [{m} + 24]\n"),
+                    concat!($before, $product, " [{m} + 32]\n", $before, $product, " [{m} + 40]\n"),
+                    concat!($before, $product, " [{m} + 48]\n", $before, $product, " [{m} + 56]\n"),
+                    "dec {n}",
+                    "jnz 2b",
+                    m = in(reg) &limbs, n = inout(reg) LOOPS => _, x = in(reg) u64::MAX,
+                    inout("rax") 3_u64 => low, inout("rdx") u64::MAX - 5 => high,
+                    out("rcx") _,
+                    options(readonly, nostack),
+                );
+            }
+            std::hint::black_box((low, high));
+        }
+    };
 }
+
+#[cfg(target_arch = "x86_64")]
+products!(by_mul, "mov rax, {x}\n", "mul qword ptr");
+#[cfg(target_arch = "x86_64")]
+products!(by_mulx, "/* {x} */", "mulx rax, rcx, qword ptr");

@@ -6,4 +6,5 @@ mod common_clmul_arm;
 mod common_clmul_soft;
 #[cfg(target_arch = "x86_64")]
 mod common_clmul_x86;
+mod common_steps;
 pub mod crc32c;

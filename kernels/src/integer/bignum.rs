@@ -122,18 +122,21 @@ impl Ready for Task {
     }
 }
 
+/// A number by eight limbs. The length is hidden from the compiler, which would unroll every loop over it and leave code that
+/// no instruction cache holds.
 #[inline(always)]
 fn eights(number: &Number) -> &[Eight] {
-    number.as_chunks::<8>().0
+    std::hint::black_box(number.as_chunks::<8>().0)
 }
 
 #[inline(always)]
 fn multiply<R: Rows>(a: &Number, b: &Number, out: &mut Double) {
     out[..LIMBS].fill(0);
     let out = out.as_chunks_mut::<8>().0;
+    let b = eights(b);
     for (k, a) in eights(a).iter().enumerate() {
         let mut window = [0; 8];
-        for (b, out) in eights(b).iter().zip(&mut out[k..]) {
+        for (b, out) in b.iter().zip(&mut out[k..]) {
             R::add_rows(out, a, b, &mut window);
         }
         out[k + LIMBS / 8] = window;
@@ -150,30 +153,32 @@ fn inverse(n: u64) -> u64 {
     x.wrapping_neg()
 }
 
-/// t/R mod n, fully reduced, for t below R·n.
+/// y ← t/R mod n, fully reduced, for t below R·n.
 #[inline(always)]
-fn reduce<R: Rows>(t: &mut Double, n: &Number, inverse: u64) -> Number {
-    let (t, n) = (t.as_chunks_mut::<8>().0, eights(n));
+fn reduce<R: Rows>(t: &mut Double, n: &Number, inverse: u64, y: &mut Number) {
+    let t = t.as_chunks_mut::<8>().0;
+    let Some((lowest, others)) = eights(n).split_first() else { return };
     let mut carry = false;
-    for k in 0..LIMBS / 8 {
+    for k in std::hint::black_box(0..LIMBS / 8) {
         let mut window = [0; 8];
-        let multiples = R::find_rows(&t[k], &n[0], inverse, &mut window);
-        for (n, t) in n[1..].iter().zip(&mut t[k + 1..]) {
+        let multiples = R::find_rows(&t[k], lowest, inverse, &mut window);
+        for (n, t) in others.iter().zip(&mut t[k + 1..]) {
             R::add_rows(t, &multiples, n, &mut window);
         }
         for (t, w) in t[k + LIMBS / 8].iter_mut().zip(window) {
             (*t, carry) = t.carrying_add(w, carry);
         }
     }
-    let (high, n) = (t[LIMBS / 8..].as_flattened(), n.as_flattened());
+    let high = t[LIMBS / 8..].as_flattened();
     let mut borrow = false;
-    let less: Number = std::array::from_fn(|i| {
-        let limb;
-        (limb, borrow) = high[i].borrowing_sub(n[i], borrow);
-        limb
-    });
+    for ((y, high), n) in y.iter_mut().zip(high).zip(n) {
+        (*y, borrow) = high.borrowing_sub(*n, borrow);
+    }
+    // n did not fit: as it was
     let keep = u64::from(borrow && !carry).wrapping_neg();
-    std::array::from_fn(|i| high[i] & keep | less[i] & !keep)
+    for (y, high) in y.iter_mut().zip(high) {
+        *y = high & keep | *y & !keep;
+    }
 }
 
 #[inline(always)]
@@ -182,21 +187,25 @@ fn body<R: Rows>(numbers: &Numbers, out: &mut [u64]) {
     let [mut a, mut b] = numbers.factors;
     for mask in &numbers.masks {
         multiply::<R>(&a, &b, &mut t);
-        a = std::array::from_fn(|i| t[i] ^ mask[i]);
-        b = std::array::from_fn(|i| t[LIMBS + i] ^ mask[LIMBS - 1 - i]);
+        let (low, high) = t.split_at(LIMBS);
+        for i in 0..LIMBS {
+            a[i] = low[i] ^ mask[i];
+            b[i] = high[i] ^ mask[LIMBS - 1 - i];
+        }
     }
     let (product, powers) = out.split_at_mut(2 * LIMBS);
     product.copy_from_slice(&t);
     let inverse = inverse(numbers.modulus[0]);
     let mut y = numbers.start;
-    for (power, half) in powers.as_chunks_mut::<LIMBS>().0.iter_mut().zip([BITS / 2, 0]) {
-        for bit in (half..half + BITS / 2).rev() {
-            multiply::<R>(&y, &y, &mut t);
-            y = reduce::<R>(&mut t, &numbers.modulus, inverse);
-            multiply::<R>(&y, &numbers.bases[(numbers.exponent >> bit) as usize & 1], &mut t);
-            y = reduce::<R>(&mut t, &numbers.modulus, inverse);
+    for step in 0..2 * BITS {
+        // an even step squares, an odd one takes a bit of the exponent in
+        let bit = numbers.exponent >> (BITS - 1 - step / 2) & 1;
+        let factor = if step % 2 == 0 { y } else { numbers.bases[bit as usize] };
+        multiply::<R>(&y, &factor, &mut t);
+        reduce::<R>(&mut t, &numbers.modulus, inverse, &mut y);
+        if step % BITS == BITS - 1 {
+            powers[step / BITS * LIMBS..][..LIMBS].copy_from_slice(&y);
         }
-        *power = y;
     }
 }
 
@@ -240,10 +249,13 @@ mod tests {
         multiply::<R>(&below, &below, &mut t);
         let mut one = [0; LIMBS];
         one[0] = 1;
-        assert_eq!(reduce::<R>(&mut t, &all, inverse(u64::MAX)), one);
+        let mut y = all;
+        reduce::<R>(&mut t, &all, inverse(u64::MAX), &mut y);
+        assert_eq!(y, one);
         // N itself, as a factor, is nothing
         multiply::<R>(&all, &below, &mut t);
-        assert_eq!(reduce::<R>(&mut t, &all, inverse(u64::MAX)), [0; LIMBS]);
+        reduce::<R>(&mut t, &all, inverse(u64::MAX), &mut y);
+        assert_eq!(y, [0; LIMBS]);
     }
 
     #[test]

@@ -136,11 +136,14 @@ impl Kernel for BitOperations {
 
 type Sums = [u64; SUMS];
 
+/// Steps, start, sums at the start, output.
+type Runner = fn(&[[u64; 3]], [u64; 2], Sums, &mut [u64]);
+
 struct State {
     start: [u64; 2],
     sums: Sums,
     steps: Vec<[u64; 3]>,
-    run: fn(&[[u64; 3]], [u64; 2], Sums, &mut [u64]),
+    run: Runner,
 }
 
 impl Ready for State {
@@ -285,7 +288,7 @@ fn portable(steps: &[[u64; 3]], start: [u64; 2], sums: Sums, out: &mut [u64]) {
 #[inline(never)]
 #[target_feature(enable = "avx2,bmi1,bmi2,lzcnt,popcnt,movbe,cmpxchg16b")]
 fn avx2(steps: &[[u64; 3]], start: [u64; 2], sums: Sums, out: &mut [u64]) {
-    body::<super::common_bits_x86::Extended>(steps, start, sums, out);
+    body::<super::common_bits_x86_bmi::Extended>(steps, start, sums, out);
 }
 
 #[cfg(target_arch = "x86_64")]

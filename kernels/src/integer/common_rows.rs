@@ -45,10 +45,11 @@ impl Rows for ByCarry {
 
     #[inline(always)]
     fn find_rows(sum: &Eight, n: &Eight, inverse: u64, window: &mut Eight) -> Eight {
-        sum.map(|sum| {
-            let m = sum.wrapping_add(window[0]).wrapping_mul(inverse);
-            row(sum, n, m, window);
-            m
-        })
+        let mut multiples = [0; 8];
+        for (m, sum) in multiples.iter_mut().zip(sum) {
+            *m = sum.wrapping_add(window[0]).wrapping_mul(inverse);
+            row(*sum, n, *m, window);
+        }
+        multiples
     }
 }

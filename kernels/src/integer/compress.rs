@@ -23,18 +23,14 @@
 //! of the text that was read back, as words.
 
 use super::common_match::{ByWords, Compare, MARGIN};
+use super::common_stream::{LEAST, LENGTH, STREAM, WINDOW, Writer, expand};
 use crate::isa::Proof;
 use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
 use crate::operands::Operands;
 
-const LENGTH: usize = 8192;
-const WINDOW: usize = 2048;
-const LEAST: usize = 4;
 const MOST: usize = 259;
 const ENTRIES: usize = 64;
 const FIELDS: usize = 512;
-/// Words that hold any stream, a power of two: nine bits for every byte fit.
-const STREAM: usize = 2048;
 const HASHES: usize = 4096;
 const SUMS: usize = 8;
 /// 2⁶⁴ divided by the golden ratio: odd, with its ones spread.
@@ -134,12 +130,13 @@ struct Room {
     /// The position plus 1 that was the newest of its hash before this one, for the positions of a window.
     before: [u16; WINDOW],
     stream: [u64; STREAM],
-    back: [u8; LENGTH],
+    /// The text read back, and room for the last of eight bytes.
+    back: [u8; LENGTH + 8],
 }
 
 impl Room {
     fn new() -> Room {
-        Room { newest: [0; HASHES], before: [0; WINDOW], stream: [0; STREAM], back: [0; LENGTH] }
+        Room { newest: [0; HASHES], before: [0; WINDOW], stream: [0; STREAM], back: [0; LENGTH + 8] }
     }
 }
 
@@ -167,44 +164,6 @@ fn digest(words: impl Iterator<Item = u64>) -> [u64; SUMS] {
         absorb(&mut sums[i % SUMS], word);
     }
     sums
-}
-
-/// Bits into a stream of words. Indices wrap, so that even a miscounting core writes where it may.
-struct Writer<'a> {
-    words: &'a mut [u64; STREAM],
-    bits: usize,
-    open: u64,
-}
-
-impl Writer<'_> {
-    /// At most 57 bits, none set above `count`.
-    #[inline(always)]
-    fn put(&mut self, value: u64, count: usize) {
-        let used = self.bits % 64;
-        self.open |= value << used;
-        self.bits += count;
-        if used + count >= 64 {
-            self.words[(self.bits / 64).wrapping_sub(1) % STREAM] = self.open;
-            // two shifts, as one by 64 would not be defined
-            self.open = value >> 1 >> (63 - used);
-        }
-    }
-
-    /// Writes what is left of the last word; the number of bits.
-    #[inline(always)]
-    fn finish(self) -> usize {
-        if !self.bits.is_multiple_of(64) {
-            self.words[self.bits / 64 % STREAM] = self.open;
-        }
-        self.bits
-    }
-}
-
-struct Tokens {
-    bits: usize,
-    literals: u64,
-    matches: u64,
-    h: u64,
 }
 
 /// Chains of earlier positions with the same hash of four bytes.
@@ -244,11 +203,18 @@ impl Chains<'_> {
     }
 }
 
+struct Tokens {
+    bits: usize,
+    literals: u64,
+    matches: u64,
+    h: u64,
+}
+
 #[inline(always)]
 fn compress<C: Compare>(text: &[u8], room: &mut Room) -> Tokens {
     room.newest.fill(0);
     let mut chains = Chains { newest: &mut room.newest, before: &mut room.before };
-    let mut writer = Writer { words: &mut room.stream, bits: 0, open: 0 };
+    let mut writer = Writer::new(&mut room.stream);
     let mut tokens = Tokens { bits: 0, literals: 0, matches: 0, h: 0 };
     let mut i = 0;
     while i < LENGTH {
@@ -259,7 +225,7 @@ fn compress<C: Compare>(text: &[u8], room: &mut Room) -> Tokens {
             let number = length - (LEAST - 1);
             let k = number.ilog2() as usize;
             // from the lowest bit: the mark, k zeros, a one, the rest of the number, the distance
-            let rest = number - (1 << k) | (distance - 1) << k;
+            let rest = (number - (1 << k)) | ((distance - 1) << k);
             writer.put(1 | 1 << (1 + k) | (rest as u64) << (2 + k), 2 + 2 * k + WINDOW.ilog2() as usize);
             tokens.matches += 1;
             absorb(&mut tokens.h, length as u64 | (distance as u64) << 16);
@@ -278,41 +244,6 @@ fn compress<C: Compare>(text: &[u8], room: &mut Room) -> Tokens {
     tokens
 }
 
-/// The 64 bits of the stream from bit `at` on.
-#[inline(always)]
-fn peek(stream: &[u64; STREAM], at: usize) -> u64 {
-    let (word, shift) = (at / 64, at % 64);
-    stream[word % STREAM] >> shift | stream[(word + 1) % STREAM] << 1 << (63 - shift)
-}
-
-/// Reads the text back. Positions wrap, so that even a wrong stream is read to the end.
-#[inline(always)]
-fn expand(stream: &[u64; STREAM], back: &mut [u8; LENGTH]) {
-    let (mut at, mut i) = (0, 0);
-    while i < LENGTH {
-        let bits = peek(stream, at);
-        if bits & 1 == 0 {
-            back[i] = (bits >> 1) as u8;
-            (at, i) = (at + 9, i + 1);
-            continue;
-        }
-        let k = ((bits >> 1).trailing_zeros() as usize).min(8);
-        let number = bits >> (2 + k) & ((1 << k) - 1) | 1 << k;
-        let distance = (bits >> (2 + 2 * k)) as usize % WINDOW + 1;
-        at += 2 + 2 * k + WINDOW.ilog2() as usize;
-        let length = (number as usize + LEAST - 1).min(LENGTH - i);
-        let from = i.wrapping_sub(distance) % LENGTH;
-        if distance >= length && from < i {
-            back.copy_within(from..from + length, i);
-        } else {
-            for j in 0..length {
-                back[i + j] = back[(from + j) % LENGTH];
-            }
-        }
-        i += length;
-    }
-}
-
 #[inline(always)]
 fn body<C: Compare>(text: &[u8], room: &mut Room, out: &mut [u64]) {
     let tokens = compress::<C>(text, room);
@@ -322,7 +253,7 @@ fn body<C: Compare>(text: &[u8], room: &mut Room, out: &mut [u64]) {
     let (stream, back) = sums.split_at_mut(SUMS);
     let words = tokens.bits.div_ceil(64).min(STREAM);
     stream.copy_from_slice(&digest(room.stream[..words].iter().copied()));
-    back.copy_from_slice(&digest(room.back.as_chunks().0.iter().map(|bytes| u64::from_le_bytes(*bytes))));
+    back.copy_from_slice(&digest(room.back[..LENGTH].as_chunks().0.iter().map(|bytes| u64::from_le_bytes(*bytes))));
 }
 
 #[inline(never)]
@@ -361,7 +292,7 @@ mod tests {
             }
             let tokens = compress::<ByWords>(&text, &mut room);
             expand(&room.stream, &mut room.back);
-            assert_eq!(room.back[..], text[..LENGTH], "{letters} letters");
+            assert_eq!(room.back[..LENGTH], text[..LENGTH], "{letters} letters");
             if letters == 1 {
                 // 8191 = 31 · 259 + 162
                 assert_eq!((tokens.literals, tokens.matches), (1, 32));

@@ -199,7 +199,7 @@ pub fn words(case: &Case) -> Vec<u64> {
         let v = stream.words(3);
         for (i, r) in step(x.wrapping_add(v[0]), y ^ v[1], v[2]).into_iter().enumerate() {
             let s = sums[i % 4].wrapping_add(r);
-            sums[i % 4] = (s << 29 | s >> 35).wrapping_mul(0x9e37_79b9_7f4a_7c15);
+            sums[i % 4] = s.rotate_left(29).wrapping_mul(0x9e37_79b9_7f4a_7c15);
         }
         x = sums[0].wrapping_add(sums[1]);
         y = sums[2].wrapping_add(sums[3]);

@@ -20,7 +20,7 @@ fn text(case: &Case) -> Vec<u8> {
     let mut number = 0;
     while text.len() < LENGTH {
         let f = fields[number % fields.len()];
-        if f % 16 == 0 {
+        if f.is_multiple_of(16) {
             text.push((f / 256) as u8);
         } else {
             text.extend_from_slice(&entries[((f / 16) & (f / 1024)) as usize % 64]);
@@ -49,7 +49,7 @@ fn append(bits: &mut Vec<bool>, value: u64, count: u32) {
 
 fn mix(sum: u64, word: u64) -> u64 {
     let s = sum.wrapping_add(word);
-    (s << 29 | s >> 35).wrapping_mul(0x9e37_79b9_7f4a_7c15)
+    s.rotate_left(29).wrapping_mul(0x9e37_79b9_7f4a_7c15)
 }
 
 fn digest(words: impl Iterator<Item = u64>) -> [u64; 8] {

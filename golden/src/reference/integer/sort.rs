@@ -13,7 +13,7 @@ fn digest(words: impl Iterator<Item = u64>) -> [u64; 4] {
     let mut sums = [0u64; 4];
     for (i, w) in words.enumerate() {
         let s = sums[i % 4].wrapping_add(w);
-        sums[i % 4] = (s << 29 | s >> 35).wrapping_mul(0x9e37_79b9_7f4a_7c15);
+        sums[i % 4] = s.rotate_left(29).wrapping_mul(0x9e37_79b9_7f4a_7c15);
     }
     sums
 }
