@@ -259,15 +259,25 @@ fn results<B: Bits>(a: u64, b: u64, c: u64) -> [u64; RESULTS] {
     ]
 }
 
+/// Result j of the row into sum j.
+#[inline(always)]
+fn absorb(s: &mut Sums, row: &[u64]) {
+    for (s, r) in s.iter_mut().zip(row) {
+        *s = s.wrapping_add(*r).rotate_left(29).wrapping_mul(SPREAD);
+    }
+}
+
 #[inline(always)]
 fn body<B: Bits>(steps: &[[u64; 3]], start: [u64; 2], mut s: Sums, out: &mut [u64]) {
     let [mut x, mut y] = start;
     for (steps, out) in steps.chunks_exact(STRIDE).zip(out.as_chunks_mut::<SUMS>().0) {
         for &[m, n, c] in steps {
-            for (i, r) in results::<B>(x.wrapping_add(m), y ^ n, c).into_iter().enumerate() {
-                let s = &mut s[i % SUMS];
-                *s = s.wrapping_add(r).rotate_left(29).wrapping_mul(SPREAD);
+            let results = results::<B>(x.wrapping_add(m), y ^ n, c);
+            let (rows, rest) = results.as_chunks::<SUMS>();
+            for row in rows {
+                absorb(&mut s, row);
             }
+            absorb(&mut s, rest);
             x = s[0].wrapping_add(s[1]);
             y = s[2].wrapping_add(s[3]);
         }

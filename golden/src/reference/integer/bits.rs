@@ -214,8 +214,8 @@ pub fn words(case: &Case) -> Vec<u64> {
 mod tests {
     use super::*;
 
-    /// Conditions that the manual of the architecture gives for comparisons: signed and unsigned order (Intel SDM vol. 1
-    /// appendix B, from memory): 0x8000 against 1 is above, and less with overflow; 1 against 1 equal.
+    /// Conditions that the manual of the architecture gives for comparisons: signed and unsigned order (the x86 manuals,
+    /// condition codes, from memory): 0x8000 against 1 is above, and less with overflow; 1 against 1 equal.
     #[test]
     fn order_with_and_without_sign() {
         let named = |e, f| {
