@@ -6,6 +6,8 @@
 use kernels::{Variant, catalogue, isa};
 
 mod cache_walk;
+mod checksum_clmul;
+mod checksum_crc32c;
 mod cipher_aes;
 mod cipher_sha256;
 mod float_chain32;
@@ -21,9 +23,13 @@ mod fma_common;
 mod fma_matmul32;
 mod fma_matmul64;
 mod fma_mixed;
+mod integer_bignum;
+mod integer_bits;
 mod integer_carry;
+mod integer_compress;
 mod integer_divide;
 mod integer_multiply;
+mod integer_sort;
 mod memory_copy;
 mod memory_march;
 mod vector_gather;
@@ -52,6 +58,12 @@ pub fn all() -> Vec<Yardstick> {
         integer_multiply::yardsticks(),
         integer_divide::yardsticks(),
         integer_carry::yardsticks(),
+        integer_bits::yardsticks(),
+        integer_bignum::yardsticks(),
+        integer_compress::yardsticks(),
+        integer_sort::yardsticks(),
+        checksum_crc32c::yardsticks(),
+        checksum_clmul::yardsticks(),
         float_chain32::yardsticks(),
         float_chain64::yardsticks(),
         float_convert::yardsticks(),

@@ -84,20 +84,14 @@ pub struct Job {
     pub start: Vec<Block>,
 }
 
-/// `array::map`. On aarch64 that stays a call, which leaves the wrapper's features behind; on x86-64 it is inlined, and
-/// a loop in its place costs a twentieth of the rate.
-#[inline(always)]
-#[cfg_attr(target_arch = "x86_64", expect(unused_mut, reason = "the loop of the other targets needs it"))]
-fn each<B: Copy, const N: usize>(mut x: [B; N], change: impl Fn(B) -> B) -> [B; N] {
-    #[cfg(target_arch = "x86_64")]
-    return x.map(change);
-    #[cfg(not(target_arch = "x86_64"))]
-    {
-        for x in &mut x {
-            *x = change(*x);
+/// Every element of an array anew. No closure and no `array::map`: whether those are inlined depends on how the crate was
+/// cut up, and where they are not they lack the wrapper's features.
+macro_rules! each {
+    ($x:ident, $change:expr) => {
+        for $x in &mut $x {
+            *$x = $change;
         }
-        x
-    }
+    };
 }
 
 /// The last block of every chain of `job`, `N` registers in flight at a time; `start` and `out` are multiples of that.
@@ -115,22 +109,22 @@ pub fn chains<R: Rounds, const N: usize>(r: R, job: &Job, out: &mut [Block]) {
         let mut x: [R::Blocks; N] = std::array::from_fn(|i| r.load(&start[i * R::WIDTH..]));
         for p in &job.plain {
             let whiten = r.xor(r.spread(p), r.spread(&keys[0]));
-            x = each(x, |x| r.xor(x, whiten));
+            each!(x, r.xor(*x, whiten));
             let last = r.spread(&keys[rounds]);
             match job.way {
                 Way::Encrypt => {
                     for k in &keys[1..rounds] {
                         let k = r.spread(k);
-                        x = each(x, |x| r.encrypt(x, k));
+                        each!(x, r.encrypt(*x, k));
                     }
-                    x = each(x, |x| r.encrypt_last(x, last));
+                    each!(x, r.encrypt_last(*x, last));
                 }
                 Way::Decrypt => {
                     for k in &keys[1..rounds] {
                         let k = r.spread(k);
-                        x = each(x, |x| r.decrypt(x, k));
+                        each!(x, r.decrypt(*x, k));
                     }
-                    x = each(x, |x| r.decrypt_last(x, last));
+                    each!(x, r.decrypt_last(*x, last));
                 }
             }
         }

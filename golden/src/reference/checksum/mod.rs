@@ -1,1 +1,4 @@
 //! References of the checksum family.
+
+pub mod clmul;
+pub mod crc32c;
