@@ -31,6 +31,7 @@ pub enum Feature {
     Lzcnt,
     Movbe,
     Gfni,
+    Prefetchw,
     Avx512cd,
     Avx512vnni,
     Avx512bf16,
@@ -76,6 +77,7 @@ impl Feature {
             Feature::Lzcnt => "lzcnt",
             Feature::Movbe => "movbe",
             Feature::Gfni => "gfni",
+            Feature::Prefetchw => "3dnowprefetch",
             Feature::Avx512cd => "avx512cd",
             Feature::Avx512vnni => "avx512vnni",
             Feature::Avx512bf16 => "avx512bf16",
@@ -123,6 +125,11 @@ impl Feature {
             Feature::Lzcnt => has!("lzcnt"),
             Feature::Movbe => has!("movbe"),
             Feature::Gfni => has!("gfni"),
+            // not among the names that the standard library knows: leaf 8000_0001h, ECX bit 8
+            Feature::Prefetchw => {
+                std::arch::x86_64::__cpuid(0x8000_0000).eax >= 0x8000_0001
+                    && std::arch::x86_64::__cpuid(0x8000_0001).ecx >> 8 & 1 == 1
+            }
             Feature::Avx512cd => has!("avx512cd"),
             Feature::Avx512vnni => has!("avx512vnni"),
             Feature::Avx512bf16 => has!("avx512bf16"),
