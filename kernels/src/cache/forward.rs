@@ -236,7 +236,9 @@ fn forward<T: Touch>(touch: T, bytes: &mut [u8], words: &[u64; WORDS], seed: u64
                 let at = SIDE - 64 + (z + 16 * pass + 11 * n) % 64;
                 let from = at + distance - (1 << v);
                 let u = (n + pass) % WIDTHS;
-                let over = from + 1 - (1 << u) + (z + 3 * n + 5 * pass) % ((1 << v) + (1 << u) - 1);
+                // divided in 32 bits, which is faster
+                let over =
+                    from + 1 - (1 << u) + ((z + 3 * n + 5 * pass) as u32 % ((1u32 << v) + (1 << u) - 1)) as usize;
                 let values = [take(5 * n + 17 * pass), take(7 * n + 23 * pass)];
                 for (second, digest) in digests.iter_mut().enumerate() {
                     // SAFETY: at is 64…127, from at least at − 32 and at most at + 32, over within 31 bytes of the load: everything

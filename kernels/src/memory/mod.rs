@@ -6,6 +6,7 @@ pub(crate) mod common_lanes;
 pub(crate) mod common_lanes_arm;
 #[cfg(target_arch = "x86_64")]
 pub(crate) mod common_lanes_x86;
+mod common_quad;
 mod common_stream;
 #[cfg(target_arch = "aarch64")]
 mod common_stream_arm;

@@ -25,6 +25,11 @@
 
 use std::hint::black_box;
 
+#[cfg(not(target_arch = "x86_64"))]
+use super::common_quad::Plain as Baseline;
+use super::common_quad::Quad;
+#[cfg(target_arch = "x86_64")]
+use super::common_quad::Sse2 as Baseline;
 use crate::aligned::{self, Line};
 use crate::isa::Proof;
 use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
@@ -150,20 +155,6 @@ impl Ready for Footprint {
     }
 }
 
-/// The bytes at an offset, if they are there.
-#[inline(always)]
-fn at<const BYTES: usize>(bytes: &mut [u8], offset: usize) -> Option<&mut [u8; BYTES]> {
-    bytes.get_mut(offset..)?.first_chunk_mut()
-}
-
-/// Adds to each of the words there and gives what they were.
-#[inline(always)]
-fn bump<const WORDS: usize>(bytes: &mut [[u8; 8]; WORDS], update: u64) -> [u64; WORDS] {
-    let was = bytes.map(u64::from_le_bytes);
-    *bytes = was.map(|w| w.wrapping_add(update).to_le_bytes());
-    was
-}
-
 /// Borders and links as their places say.
 #[inline(always)]
 fn write(bytes: &mut [u8], plan: &Plan) {
@@ -187,20 +178,34 @@ fn write(bytes: &mut [u8], plan: &Plan) {
 
 /// `hops` pages from byte `from` on; gives where the next page begins and the two digests, or the link that left the footprint.
 #[inline(always)]
-fn segment(bytes: &mut [u8], mut from: usize, hops: usize, lap: usize, update: u64) -> Result<(usize, [u64; 2]), u64> {
+fn segment<Q: Quad>(
+    quad: Q,
+    bytes: &mut [u8],
+    mut from: usize,
+    hops: usize,
+    lap: usize,
+    update: u64,
+) -> Result<(usize, [u64; 2]), u64> {
     let (mut d, mut e) = (0u64, 0u64);
+    // a page and the line behind it
+    let Some(last) = bytes.len().checked_sub(PAGE + 64) else { return Err(from as u64) };
     for _ in 0..hops {
-        let i = from / PAGE;
-        let border = from.wrapping_add(PAGE);
-        let Some(link) = at::<8>(bytes, from.wrapping_add(links(i) + 8 * ((lap + i) % 4))) else {
+        if from > last {
             return Err(from as u64);
+        }
+        let i = from / PAGE;
+        let (link, word) = (from + links(i) + 8 * ((lap + i) % 4), from + PAGE - (1 + (i + lap) % 7));
+        let words = from + PAGE - (1 + (i + 3 * lap) % 31);
+        let base = bytes.as_mut_ptr();
+        // SAFETY: links are within a page, the words begin within it and end within 64 bytes behind it, and all that is within `bytes`
+        let (next, y) = unsafe {
+            let next = base.add(link).cast::<u64>().read_unaligned();
+            let word = base.add(word).cast::<u64>();
+            let x = word.read_unaligned();
+            word.write_unaligned(x.wrapping_add(update));
+            d = d.wrapping_mul(M).wrapping_add(x);
+            (next, quad.bump(base.add(words), update))
         };
-        let next = u64::from_le_bytes(*link);
-        let Some(word) = at::<8>(bytes, border.wrapping_sub(1 + (i + lap) % 7)) else { return Err(from as u64) };
-        let [x] = bump(std::array::from_mut(word), update);
-        d = d.wrapping_mul(M).wrapping_add(x);
-        let Some(words) = at::<32>(bytes, border.wrapping_sub(1 + (i + 3 * lap) % 31)) else { return Err(from as u64) };
-        let y = bump(words.as_chunks_mut::<8>().0.first_chunk_mut::<4>().expect("four"), update);
         let sum = (0..4).fold(0u64, |sum, j| sum.wrapping_add(y[j].wrapping_mul(FACTORS[j])));
         e = e.wrapping_mul(M).wrapping_add(sum);
         from = next as usize;
@@ -209,14 +214,14 @@ fn segment(bytes: &mut [u8], mut from: usize, hops: usize, lap: usize, update: u
 }
 
 #[inline(always)]
-fn walk(bytes: &mut [u8], plan: &Plan, out: &mut [[u64; 2]]) {
+fn walk<Q: Quad>(quad: Q, bytes: &mut [u8], plan: &Plan, out: &mut [[u64; 2]]) {
     write(bytes, plan);
     let hops = plan.pages / plan.segments;
     let bytes = black_box(bytes);
     for (k, lap) in out.chunks_exact_mut(plan.segments).enumerate() {
         let mut from = 0;
         for digests in lap {
-            match segment(bytes, from, hops, k, plan.updates[k % 8]) {
+            match segment(quad, bytes, from, hops, k, plan.updates[k % 8]) {
                 Ok((next, pair)) => (from, *digests) = (next, pair),
                 // out of the footprint it stays, so that the rest of the lap ends the same way
                 Err(link) => (from, *digests) = (link as usize, [link; 2]),
@@ -227,14 +232,15 @@ fn walk(bytes: &mut [u8], plan: &Plan, out: &mut [[u64; 2]]) {
 
 #[inline(never)]
 fn portable(bytes: &mut [u8], plan: &Plan, out: &mut [[u64; 2]]) {
-    walk(bytes, plan, out);
+    walk(Baseline, bytes, plan, out);
 }
 
 #[cfg(target_arch = "x86_64")]
 #[inline(never)]
 #[target_feature(enable = "avx2")]
 fn avx2(bytes: &mut [u8], plan: &Plan, out: &mut [[u64; 2]]) {
-    walk(bytes, plan, out);
+    // SAFETY: this function is compiled for, and its callers proved, avx2
+    walk(unsafe { super::common_lanes_x86::Avx2::new() }, bytes, plan, out);
 }
 
 /// The runner of a variant whose features a `Proof` has shown.
@@ -267,7 +273,7 @@ mod tests {
             let (mut seen, mut page) = ([false; 64], 0);
             for _ in 0..64 {
                 assert!(!std::mem::replace(&mut seen[page / PAGE], true), "link {q} comes to byte {page} twice");
-                page = segment(&mut bytes, page, 1, q, 0).expect("links are right").0;
+                page = segment(Baseline, &mut bytes, page, 1, q, 0).expect("links are right").0;
             }
             assert_eq!(page, 0, "link {q}");
         }
@@ -285,7 +291,7 @@ mod tests {
     #[test]
     fn half_a_store_lost_beyond_a_border_shows_in_the_next_lap() {
         let (bytes, _) = footprint();
-        let lap = |bytes: &mut [u8], k| segment(bytes, 0, 64, k, 77).expect("links are right").1;
+        let lap = |bytes: &mut [u8], k| segment(Baseline, bytes, 0, 64, k, 77).expect("links are right").1;
         let mut sound = bytes.clone();
         lap(&mut sound, 0);
         let right = lap(&mut sound.clone(), 1);
@@ -306,9 +312,17 @@ mod tests {
         let (mut bytes, plan) = footprint();
         let wild = 1u64 << 40;
         bytes[links(0)..links(0) + 8].copy_from_slice(&wild.to_le_bytes());
-        assert_eq!(segment(&mut bytes, 0, 64, 0, 1), Err(wild));
-        assert_eq!(segment(&mut bytes, 64 * PAGE, 64, 0, 1), Err(64 * PAGE as u64), "a page that begins too late");
-        assert_eq!(segment(&mut bytes, usize::MAX, 64, 0, 1), Err(u64::MAX), "an address that would wrap around");
+        assert_eq!(segment(Baseline, &mut bytes, 0, 64, 0, 1), Err(wild));
+        assert_eq!(
+            segment(Baseline, &mut bytes, 64 * PAGE, 64, 0, 1),
+            Err(64 * PAGE as u64),
+            "a page that begins too late"
+        );
+        assert_eq!(
+            segment(Baseline, &mut bytes, usize::MAX, 64, 0, 1),
+            Err(u64::MAX),
+            "an address that would wrap around"
+        );
         assert_eq!(plan.pages, 64);
     }
 }
