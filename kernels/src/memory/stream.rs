@@ -25,8 +25,8 @@ use crate::operands::Operands;
 
 /// Lines of one turn of the loop: each kind of store once.
 const BLOCK: usize = 8;
-/// Bytes by which a line is called for before it is read or written.
-const AHEAD: usize = 16 * 64;
+/// Bytes by which a line is called for before it is read or written: half of the lines have to come from memory itself.
+const AHEAD: usize = 64 * 64;
 /// (KiB, passes).
 const SHAPES: [(u32, usize); 4] = [(24, 8), (384, 4), (4096, 2), (32_768, 2)];
 

@@ -19,7 +19,7 @@ impl Lanes {
 
     fn push_bytes(&mut self, bytes: &[u8]) {
         for line in bytes.chunks(64) {
-            self.push(line.chunks(8).map(|word| little(word)));
+            self.push(line.chunks(8).map(little));
         }
     }
 
