@@ -34,9 +34,14 @@ pub static PLAN: &[(&str, &[(u32, u64)])] = &[
     ("vector.gather", &[(25, 64), (265, 64)]),
     ("cipher.aes", &[(6, 64)]),
     ("cipher.sha256", &[(16, 64)]),
+    ("string.copy", &[(20, 64)]),
     ("cache.walk", &[(256, 64), (16, 64), (4096, 64)]),
+    ("cache.forward", &[(12, 64)]),
+    ("cache.evict", &[(512, 64), (4096, 64), (32_768, 64)]),
     ("memory.march", &[(1024, 64), (32, 64), (4096, 64)]),
     ("memory.copy", &[(384, 64), (24, 64), (3072, 64)]),
+    ("memory.stream", &[(384, 64), (24, 64), (4096, 64), (32_768, 64)]),
+    ("memory.walk", &[(4096, 64), (256, 64), (32_768, 64)]),
 ];
 
 macro_rules! embed {
@@ -71,9 +76,14 @@ pub static TABLES: &[(&str, &str)] = embed![
     "vector.gather",
     "cipher.aes",
     "cipher.sha256",
+    "string.copy",
     "cache.walk",
+    "cache.forward",
+    "cache.evict",
     "memory.march",
     "memory.copy",
+    "memory.stream",
+    "memory.walk",
 ];
 
 /// SHA-256 of each table, in the format of `sha256sum`.

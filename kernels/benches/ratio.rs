@@ -24,6 +24,7 @@ const RATIOS: &[(&str, Option<Variant>, f64)] = &[
     ("fma.matmul64", Some(Variant::Avx2), 0.85),
     ("cipher.aes", None, 0.90),
     ("memory.copy", None, 0.90),
+    ("memory.stream", None, 0.90),
 ];
 
 /// Kernel and variant whose yardstick itself has to reach so many units a cycle, on CPUs with two FMA units of 256 bits.

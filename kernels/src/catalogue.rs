@@ -28,9 +28,14 @@ pub static KERNELS: &[&dyn Kernel] = &[
     &crate::vector::gather::Gather,
     &crate::cipher::aes::Aes,
     &crate::cipher::sha256::Sha256,
+    &crate::string::copy::Copy,
     &crate::cache::walk::Walk,
+    &crate::cache::forward::Forward,
+    &crate::cache::evict::Evict,
     &crate::memory::march::March,
     &crate::memory::copy::Copy,
+    &crate::memory::stream::Stream,
+    &crate::memory::walk::Walk,
 ];
 
 /// The kernel with this id.

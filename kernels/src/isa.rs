@@ -32,6 +32,7 @@ pub enum Feature {
     Movbe,
     Cmpxchg16b,
     Gfni,
+    Prefetchw,
     Avx512cd,
     Avx512vnni,
     Avx512bf16,
@@ -78,6 +79,7 @@ impl Feature {
             Feature::Movbe => "movbe",
             Feature::Cmpxchg16b => "cmpxchg16b",
             Feature::Gfni => "gfni",
+            Feature::Prefetchw => "3dnowprefetch",
             Feature::Avx512cd => "avx512cd",
             Feature::Avx512vnni => "avx512vnni",
             Feature::Avx512bf16 => "avx512bf16",
@@ -126,6 +128,11 @@ impl Feature {
             Feature::Movbe => has!("movbe"),
             Feature::Cmpxchg16b => has!("cmpxchg16b"),
             Feature::Gfni => has!("gfni"),
+            // not among the names that the standard library knows: leaf 8000_0001h, ECX bit 8
+            Feature::Prefetchw => {
+                std::arch::x86_64::__cpuid(0x8000_0000).eax >= 0x8000_0001
+                    && std::arch::x86_64::__cpuid(0x8000_0001).ecx >> 8 & 1 == 1
+            }
             Feature::Avx512cd => has!("avx512cd"),
             Feature::Avx512vnni => has!("avx512vnni"),
             Feature::Avx512bf16 => has!("avx512bf16"),

@@ -44,9 +44,14 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("vector.gather", vector::gather::words),
     ("cipher.aes", cipher::aes::words),
     ("cipher.sha256", cipher::sha256::words),
+    ("string.copy", string::copy::words),
     ("cache.walk", cache::walk::words),
+    ("cache.forward", cache::forward::words),
+    ("cache.evict", cache::evict::words),
     ("memory.march", memory::march::words),
     ("memory.copy", memory::copy::words),
+    ("memory.stream", memory::stream::words),
+    ("memory.walk", memory::walk::words),
 ];
 
 /// The right output of `case`, computed now; `None` for an unknown kernel.

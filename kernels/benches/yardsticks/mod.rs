@@ -5,6 +5,8 @@
 
 use kernels::{Variant, catalogue, isa};
 
+mod cache_evict;
+mod cache_forward;
 mod cache_walk;
 mod checksum_clmul;
 mod checksum_crc32c;
@@ -32,6 +34,9 @@ mod integer_multiply;
 mod integer_sort;
 mod memory_copy;
 mod memory_march;
+mod memory_stream;
+mod memory_walk;
+mod string_copy;
 mod vector_gather;
 mod vector_shuffle;
 
@@ -79,9 +84,14 @@ pub fn all() -> Vec<Yardstick> {
         vector_gather::yardsticks(),
         cipher_aes::yardsticks(),
         cipher_sha256::yardsticks(),
+        string_copy::yardsticks(),
         cache_walk::yardsticks(),
+        cache_forward::yardsticks(),
+        cache_evict::yardsticks(),
         memory_march::yardsticks(),
         memory_copy::yardsticks(),
+        memory_stream::yardsticks(),
+        memory_walk::yardsticks(),
     ]
     .into_iter()
     .flatten()

@@ -7,8 +7,8 @@
 //!   bytes, over the payload's own bytes, upwards from its end and downwards from its start.
 //!
 //! A run writes every payload afresh at place (128 · r / R) of the path, then lets each take one hop in turn, so many rounds that
-//! all hops of all payloads are as [`SHAPES`] says, then reads every payload once more. What a hop loads is both stored and taken
-//! into a digest: each store is read by the next hop, and a wrong byte, once stored, is in every later digest.
+//! all hops of all payloads are as [`SHAPES`] says, then reads every payload once more. A hop moves ten lines, then reads them back
+//! where they now are and takes them into a digest: a wrong byte, loaded or stored, shows at once and in every later digest.
 //!
 //! What a store overwrites are other bytes, as the place visited before on that side has another offset; only where a run enters
 //! a side once and last (one hop of 256 at 384 KiB, two of 1,024 at 3,072) are they the last run's equal ones.
@@ -29,7 +29,9 @@ use crate::operands::Operands;
 
 /// Lines of one payload.
 const LINES: usize = 190;
-const _: () = assert!(LINES.is_multiple_of(2), "moved in pairs");
+/// Lines that are moved before they are read back.
+const BLOCK: usize = 10;
+const _: () = assert!(LINES.is_multiple_of(BLOCK));
 /// Bytes by which a line is called for before it is moved.
 const AHEAD: isize = 16 * 64;
 /// Bytes of one slot: a payload at any offset below 64, and a line between neighbours.
@@ -77,8 +79,8 @@ impl Kernel for Copy {
 
     fn work(&self, size: Size) -> Work {
         let (payloads, rounds) = shape(size);
-        // bytes read and written: once written, once moved a round, once read
-        Work { amount: (payloads * LINES * 64 * (1 + 2 * rounds + 1)) as u64, unit: "byte" }
+        // bytes read and written: once written, once moved and read back a round, once read
+        Work { amount: (payloads * LINES * 64 * (1 + 3 * rounds + 1)) as u64, unit: "byte" }
     }
 
     fn builds(&self) -> &'static [Build] {
@@ -163,32 +165,41 @@ impl Ready for Buffers {
     }
 }
 
-/// Moves one payload within `bytes` and takes what it loads into the digest.
+/// Moves one payload within `bytes`, block by block, and takes into the digest what each block's target then holds.
 #[inline(always)]
 fn hop<L: Lanes>(l: L, bytes: &mut [u8], from: usize, to: usize, digest: &mut Digest<L>) {
     const BYTES: usize = LINES * 64;
     assert!(from.max(to) + BYTES <= bytes.len());
     let base = bytes.as_mut_ptr();
-    let mut one = |at: usize, ahead: isize| {
-        // the digest's work on a line fills the core's queues while the line is awaited, unless it was called for before
+    let move_line = |at: usize, ahead: isize| {
+        // the digest's work on a block fills the core's queues while a line is awaited, unless it was called for before
         l.prefetch(base.wrapping_add(from + at).wrapping_offset(ahead));
         // SAFETY: `at` ≤ BYTES − 64 and both payloads end within `bytes`, as asserted above
-        unsafe {
-            let v = l.load(base.add(from + at));
-            l.store(v, base.add(to + at));
-            digest.push(v);
-        }
+        unsafe { l.store(l.load(base.add(from + at)), base.add(to + at)) };
     };
-    // two lines a turn: half the loop's own instructions
+    // SAFETY: as above
+    let moved = |at: usize| unsafe { l.load(base.add(to + at)) };
+    // SAFETY: no instruction; the compiler takes it that memory may have changed and loads what was stored again
+    let settle = || unsafe { std::arch::asm!("", options(nostack, preserves_flags)) };
     if from < to && to < from + BYTES {
-        for pair in (0..LINES / 2).rev() {
-            one(128 * pair + 64, -AHEAD);
-            one(128 * pair, -AHEAD);
+        for block in (0..LINES / BLOCK).rev() {
+            for i in (0..BLOCK).rev() {
+                move_line(64 * (BLOCK * block + i), -AHEAD);
+            }
+            settle();
+            for i in (0..BLOCK).rev() {
+                digest.push(moved(64 * (BLOCK * block + i)));
+            }
         }
     } else {
-        for pair in 0..LINES / 2 {
-            one(128 * pair, AHEAD);
-            one(128 * pair + 64, AHEAD);
+        for block in 0..LINES / BLOCK {
+            for i in 0..BLOCK {
+                move_line(64 * (BLOCK * block + i), AHEAD);
+            }
+            settle();
+            for i in 0..BLOCK {
+                digest.push(moved(64 * (BLOCK * block + i)));
+            }
         }
     }
 }

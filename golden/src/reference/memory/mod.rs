@@ -3,3 +3,5 @@
 pub mod common_digest;
 pub mod copy;
 pub mod march;
+pub mod stream;
+pub mod walk;

@@ -1,1 +1,3 @@
 //! References of the string family.
+
+pub mod copy;
