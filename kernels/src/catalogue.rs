@@ -15,6 +15,8 @@ pub static KERNELS: &[&dyn Kernel] = &[
     &crate::fma::chain64::Chain64,
     &crate::vector::shuffle::Shuffle,
     &crate::vector::gather::Gather,
+    &crate::vector::integer::Integer,
+    &crate::vector::dot8::Dot8,
     &crate::cipher::aes::Aes,
     &crate::cipher::sha256::Sha256,
     &crate::cache::walk::Walk,

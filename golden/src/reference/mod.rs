@@ -31,6 +31,8 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("fma.chain64", fma::chain64::words),
     ("vector.shuffle", vector::shuffle::words),
     ("vector.gather", vector::gather::words),
+    ("vector.integer", vector::integer::words),
+    ("vector.dot8", vector::dot8::words),
     ("cipher.aes", cipher::aes::words),
     ("cipher.sha256", cipher::sha256::words),
     ("cache.walk", cache::walk::words),

@@ -21,7 +21,9 @@ mod integer_divide;
 mod integer_multiply;
 mod memory_copy;
 mod memory_march;
+mod vector_dot8;
 mod vector_gather;
+mod vector_integer;
 mod vector_shuffle;
 
 /// The bare loop beside one variant of one kernel.
@@ -55,6 +57,8 @@ pub fn all() -> Vec<Yardstick> {
         fma_chain64::yardsticks(),
         vector_shuffle::yardsticks(),
         vector_gather::yardsticks(),
+        vector_integer::yardsticks(),
+        vector_dot8::yardsticks(),
         cipher_aes::yardsticks(),
         cipher_sha256::yardsticks(),
         cache_walk::yardsticks(),

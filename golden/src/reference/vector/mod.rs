@@ -1,4 +1,6 @@
 //! References of the vector family.
 
+pub mod dot8;
 pub mod gather;
+pub mod integer;
 pub mod shuffle;
