@@ -19,7 +19,6 @@ use yardsticks::Yardstick;
 const RATIOS: &[(&str, Option<Variant>, f64)] = &[
     ("integer.multiply", None, 0.90),
     ("vector.integer", None, 0.90),
-    ("vector.dot8", None, 0.90),
     ("fma.chain32", Some(Variant::Avx2), 0.95),
     ("fma.chain64", Some(Variant::Avx2), 0.95),
     ("cipher.aes", None, 0.90),

@@ -16,6 +16,7 @@ pub static KERNELS: &[&dyn Kernel] = &[
     &crate::vector::shuffle::Shuffle,
     &crate::vector::gather::Gather,
     &crate::vector::integer::Integer,
+    &crate::vector::permute::Permute,
     &crate::vector::dot8::Dot8,
     &crate::cipher::aes::Aes,
     &crate::cipher::sha256::Sha256,

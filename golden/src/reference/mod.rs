@@ -32,6 +32,7 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("vector.shuffle", vector::shuffle::words),
     ("vector.gather", vector::gather::words),
     ("vector.integer", vector::integer::words),
+    ("vector.permute", vector::permute::words),
     ("vector.dot8", vector::dot8::words),
     ("cipher.aes", cipher::aes::words),
     ("cipher.sha256", cipher::sha256::words),

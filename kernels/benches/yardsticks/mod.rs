@@ -24,6 +24,7 @@ mod memory_march;
 mod vector_dot8;
 mod vector_gather;
 mod vector_integer;
+mod vector_permute;
 mod vector_shuffle;
 
 /// The bare loop beside one variant of one kernel.
@@ -58,6 +59,7 @@ pub fn all() -> Vec<Yardstick> {
         vector_shuffle::yardsticks(),
         vector_gather::yardsticks(),
         vector_integer::yardsticks(),
+        vector_permute::yardsticks(),
         vector_dot8::yardsticks(),
         cipher_aes::yardsticks(),
         cipher_sha256::yardsticks(),

@@ -4,4 +4,5 @@ mod common_gather;
 pub mod dot8;
 pub mod gather;
 pub mod integer;
+pub mod permute;
 pub mod shuffle;

@@ -16,6 +16,8 @@ mod encodings;
 pub mod dot8;
 #[macro_use]
 mod integer_round;
+#[macro_use]
+pub mod permute;
 
 #[cfg(target_arch = "x86_64")]
 pub mod avx2;

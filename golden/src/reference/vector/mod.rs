@@ -3,4 +3,5 @@
 pub mod dot8;
 pub mod gather;
 pub mod integer;
+pub mod permute;
 pub mod shuffle;
