@@ -18,6 +18,7 @@ pub static KERNELS: &[&dyn Kernel] = &[
     &crate::vector::integer::Integer,
     &crate::vector::permute::Permute,
     &crate::vector::dot8::Dot8,
+    &crate::vector::mask::Mask,
     &crate::cipher::aes::Aes,
     &crate::cipher::sha256::Sha256,
     &crate::cache::walk::Walk,

@@ -34,6 +34,7 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("vector.integer", vector::integer::words),
     ("vector.permute", vector::permute::words),
     ("vector.dot8", vector::dot8::words),
+    ("vector.mask", vector::mask::words),
     ("cipher.aes", cipher::aes::words),
     ("cipher.sha256", cipher::sha256::words),
     ("cache.walk", cache::walk::words),

@@ -24,6 +24,7 @@ mod memory_march;
 mod vector_dot8;
 mod vector_gather;
 mod vector_integer;
+mod vector_mask;
 mod vector_permute;
 mod vector_shuffle;
 
@@ -61,6 +62,7 @@ pub fn all() -> Vec<Yardstick> {
         vector_integer::yardsticks(),
         vector_permute::yardsticks(),
         vector_dot8::yardsticks(),
+        vector_mask::yardsticks(),
         cipher_aes::yardsticks(),
         cipher_sha256::yardsticks(),
         cache_walk::yardsticks(),

@@ -17,6 +17,8 @@ pub mod dot8;
 #[macro_use]
 mod integer_round;
 #[macro_use]
+pub mod mask;
+#[macro_use]
 pub mod permute;
 
 #[cfg(target_arch = "x86_64")]
