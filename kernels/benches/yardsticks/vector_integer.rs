@@ -24,8 +24,8 @@ pub fn yardsticks() -> Vec<Yardstick> {
     let units = round * LOOPS as u64;
     let id = kernel.id();
     // SAFETY: sse2 is in the baseline
-    let mut list =
-        vec![Yardstick { kernel: id, variant: Variant::Portable, units, run: Box::new(|| unsafe { portable() }) }];
+    let run = Box::new(|| unsafe { portable() });
+    let mut list = vec![Yardstick { kernel: id, variant: Variant::Portable, units, run }];
     if available(id, Variant::Avx2) {
         // SAFETY: avx2 is present
         let run = Box::new(|| unsafe { avx2() });

@@ -23,8 +23,8 @@ pub fn yardsticks() -> Vec<Yardstick> {
     let units = round * LOOPS as u64;
     let id = kernel.id();
     // SAFETY: sse2 is in the baseline
-    let mut list =
-        vec![Yardstick { kernel: id, variant: Variant::Portable, units, run: Box::new(|| unsafe { portable() }) }];
+    let run = Box::new(|| unsafe { portable() });
+    let mut list = vec![Yardstick { kernel: id, variant: Variant::Portable, units, run }];
     if available(id, Variant::Avx2) {
         // SAFETY: avx2 is present
         let run = Box::new(|| unsafe { avx2() });
@@ -45,7 +45,7 @@ macro_rules! bare {
         fn $name() {
             use kernels::vectors::{Line, $module::*, mask::$module::*};
             let line = std::hint::black_box(Line::from_words(std::array::from_fn(|i| (i as u64 + 1) * 0x0101_0305_0709)));
-            let (mut word, mut memory) = ([0; 8], line);
+            let (mut word, mut memory) = ([0; 8], [line; 4]);
             let mut x = [load(&line, 0); 8];
             let (mut a, mut b, mut c, mut d) = (x[0], x[1], x[2], x[3]);
             for _ in 0..LOOPS {
@@ -64,9 +64,11 @@ macro_rules! bare {
                     ($keep:ident $i:literal, $m:expr) => {
                         $keep(&line, 0, $m)
                     };
-                    ($put:ident, $u:expr, $m:expr, $v:expr) => {
-                        $put($u, $m, $v, &mut memory, 0)
-                    };
+                    ($j:literal $put:ident, $u:expr, $m:expr, $v:expr) => {{
+                        let before = load(&memory[$j], 0);
+                        $put($u, $m, $v, &mut memory[$j], 0);
+                        before
+                    }};
                 }
                 kernels::mask_round!(x, y, k);
                 let m = and(and(k!(0), k!(1)), and(k!(2), k!(3)));
@@ -74,7 +76,7 @@ macro_rules! bare {
                 signs(sub8(x[0], x[5]), &mut word, 0);
                 tests(x[0], x[3], m, and(k!(1), k!(2)), &mut word, 0);
             }
-            std::hint::black_box((x, word));
+            std::hint::black_box((x, word, memory));
         }
     };
 }

@@ -6,8 +6,9 @@
 //! bijection of the block that it changes: an element chosen wrongly, a comparison's wrong bit stays, and spreads. Blocks
 //! are compared as floats by all sixteen predicates, as the random bits that they are: denormals, infinities and NaNs
 //! come with their share, and as the results are masks, no NaN comes out. For equality, a blend is compared with one of
-//! the two that it was made of. Under masks, elements are loaded from the operands, and stored over a block in memory,
-//! which is then read back. Once a round the signs of one vector's bytes, of the elements of two blocks, and the flags of
+//! the two that it was made of. Under masks, elements are loaded from the operands, and stored over blocks in four
+//! places of memory (zero at the start), which are read back a round later, and after the last one (place j is added to
+//! block 2j in 64-bit words). Once a round the signs of one vector's bytes, of the elements of two blocks, and the flags of
 //! tests against sparse masks go into two words, 16 bits a net each; the words are digested as h ← rotl(h, 29)·c + word,
 //! a bijection in both.
 //!
@@ -325,7 +326,7 @@ macro_rules! wrapped {
                     load(a, at), load(b, at), load(c, at), load(d, at), load(e, at), load(f, at), load(g, at), load(h, at)
                 ];
                 let mut place = bits.iter_mut();
-                let mut memory = Line([0; 64]);
+                let mut memory = [Line([0; 64]); 4];
                 for _ in 0..PASSES {
                     for round in rounds {
                         macro_rules! k {
@@ -335,9 +336,11 @@ macro_rules! wrapped {
                             ($keep:ident $i:literal, $m:expr) => {
                                 $keep(&round[$i], at, $m)
                             };
-                            ($put:ident, $u:expr, $m:expr, $v:expr) => {
-                                $put($u, $m, $v, &mut memory, at)
-                            };
+                            ($j:literal $put:ident, $u:expr, $m:expr, $v:expr) => {{
+                                let before = load(&memory[$j], at);
+                                $put($u, $m, $v, &mut memory[$j], at);
+                                before
+                            }};
                         }
                         crate::mask_round!(x, x, k);
                         let m = and(and(k!(0), k!(1)), and(k!(2), k!(3)));
@@ -347,6 +350,9 @@ macro_rules! wrapped {
                             tests(x[0], x[3], m, and(k!(1), k!(6)), second, at);
                         }
                     }
+                }
+                for (j, line) in memory.iter().enumerate() {
+                    x[2 * j] = add64(x[2 * j], load(line, at));
                 }
                 for (line, block) in blocks.iter_mut().zip(x) {
                     store(line, at, block);

@@ -9,6 +9,11 @@
 //! by side; every function treats each block by itself and in the same way, whatever the hardware's lanes are. Names end
 //! with the width in bits of the elements that an operation looks at; `s` and `u` before it mean signed and unsigned.
 
+#![expect(
+    clippy::missing_safety_doc,
+    reason = "safe functions: calling them is unsafe only where their target features are not enabled, as for any such function"
+)]
+
 #[cfg(target_arch = "x86_64")]
 #[macro_use]
 mod encodings;

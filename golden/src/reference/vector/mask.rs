@@ -70,8 +70,11 @@ fn share(line: &Line, net: usize) -> Block {
     u128::from(line[2 * net]) | u128::from(line[2 * net + 1]) << 64
 }
 
-fn round(x: &mut [Block; 8], lines: &[Block]) {
+/// `memory` holds what was stored a round ago.
+fn round(x: &mut [Block; 8], memory: &mut [Block; 4], lines: &[Block]) {
     let k = |i: usize| lines[i];
+    let b = std::mem::replace(&mut memory[0], select(64, x[4], x[5], k(1)));
+    let c = std::mem::replace(&mut memory[1], select(32, x[2], x[4], k(0)));
     x[0] = add(8, x[0], select(8, x[4], x[5], k(0)));
     x[1] = sub(16, x[1], select(8, x[4], x[2], (x[5] & x[3]) ^ k(0)));
     let a = select(32, x[4], k(1), x[2]);
@@ -88,28 +91,30 @@ fn round(x: &mut [Block; 8], lines: &[Block]) {
     x[1] ^= compare(64, 3, k(0), a);
     x[0] = add(32, x[0], compare(64, 0, x[4], x[3]));
     x[1] = sub(64, x[1], compare(64, 1, x[2], k(1)));
-    x[0] = add(16, x[0], select(64, x[4], x[5], k(1)));
-    x[1] = sub(8, x[1], x[5] & x[3]);
-    x[0] = add(64, x[0], !x[5] & x[2]);
-    x[3] = sub(32, x[3], select(8, x[6], x[7], k(2)));
-    x[2] = add(8, x[2], select(16, x[7], x[4], (x[6] | x[5]) ^ k(3)));
+    x[0] = add(16, x[0], x[5] & x[3]);
+    x[1] = sub(8, x[1], !x[5] & x[2]);
+    let d = std::mem::replace(&mut memory[2], select(64, x[7], x[5], k(3)));
+    x[2] = add(64, x[2], select(8, x[6], x[7], k(2)));
+    x[3] = sub(32, x[3], select(16, x[7], x[4], (x[6] | x[5]) ^ k(3)));
     let a = select(32, x[6], k(3), x[4]);
-    x[3] = sub(16, x[3], a);
-    x[2] ^= compare(32, 4, a, x[6]);
-    x[3] = add(32, x[3], compare(32, 5, k(3), a));
-    x[2] = sub(64, x[2], compare(32, 6, x[7], x[4]));
-    x[3] = add(16, x[3], compare(32, 7, x[5], k(2)));
-    x[2] = sub(8, x[2], select(64, 0, k(3), x[7]));
-    x[3] = add(64, x[3], x[7] | x[4]);
+    x[2] = add(8, x[2], a);
+    x[3] = sub(16, x[3], compare(32, 4, a, x[6]));
+    x[2] ^= compare(32, 5, k(3), a);
+    x[3] = add(32, x[3], compare(32, 6, x[7], x[4]));
+    x[2] = sub(64, x[2], compare(32, 7, x[5], k(2)));
+    x[3] = add(16, x[3], select(64, 0, k(3), x[7]));
+    x[2] = sub(8, x[2], x[7] | x[4]);
     let a = select(64, x[7], k(2), x[5]);
-    x[2] = sub(32, x[2], a);
-    x[3] = add(8, x[3], compare(64, 6, a, x[7]));
-    x[2] = sub(16, x[2], compare(64, 7, k(2), a));
-    x[3] ^= compare(64, 4, x[6], x[5]);
-    x[2] = add(32, x[2], compare(64, 5, x[4], k(3)));
-    x[3] = sub(64, x[3], select(32, x[4], x[6], k(2)));
-    x[2] = add(16, x[2], x[6] | x[4]);
+    x[3] = add(64, x[3], a);
+    x[2] = sub(32, x[2], compare(64, 6, a, x[7]));
+    x[3] = add(8, x[3], compare(64, 7, k(2), a));
+    x[2] = sub(16, x[2], compare(64, 4, x[6], x[5]));
+    x[3] ^= compare(64, 5, x[4], k(3));
+    x[2] = add(32, x[2], x[6] | x[4]);
+    x[3] = sub(64, x[3], b);
+    x[2] = add(16, x[2], c);
     x[3] = sub(8, x[3], x[6] & x[7]);
+    let e = std::mem::replace(&mut memory[3], select(32, x[7], x[6], k(4)));
     x[4] = add(64, x[4], select(8, x[0], x[1], k(4)));
     x[5] = sub(32, x[5], select(8, x[0], x[6], !(x[1] ^ x[7]) & k(4)));
     let a = select(32, x[0], k(5), x[6]);
@@ -126,8 +131,8 @@ fn round(x: &mut [Block; 8], lines: &[Block]) {
     x[5] = add(8, x[5], compare(64, 11, k(4), a));
     x[4] = sub(16, x[4], compare(64, 8, x[0], x[7]));
     x[5] ^= compare(64, 9, x[6], k(5));
-    x[4] = add(32, x[4], select(64, x[1], x[7], k(5)));
-    x[5] = sub(64, x[5], x[6] ^ x[0]);
+    x[4] = add(32, x[4], x[6] ^ x[0]);
+    x[5] = sub(64, x[5], d);
     x[4] = add(16, x[4], !x[1] & x[6]);
     x[7] = sub(8, x[7], select(8, x[2], x[3], k(6)));
     x[6] = add(64, x[6], select(32, x[3], x[1], (!x[2] & x[0]) | k(7)));
@@ -145,8 +150,8 @@ fn round(x: &mut [Block; 8], lines: &[Block]) {
     x[6] = sub(32, x[6], compare(64, 15, k(6), a));
     x[7] = add(8, x[7], compare(64, 12, x[2], x[1]));
     x[6] = sub(16, x[6], compare(64, 13, x[0], k(7)));
-    x[7] ^= select(32, x[1], x[0], k(6));
-    x[6] = add(32, x[6], !x[2] & x[3]);
+    x[7] ^= !x[2] & x[3];
+    x[6] = add(32, x[6], e);
     x[7] = sub(64, x[7], x[2] & x[3]);
 }
 
@@ -176,13 +181,17 @@ pub fn words(case: &Case) -> Vec<u64> {
     let (mut out, mut collected) = (vec![0; 65], vec![[0u64; 2]; 96]);
     for net in 0..4 {
         let mut x: [Block; 8] = std::array::from_fn(|i| share(&start[i], net));
+        let mut memory = [0; 4];
         for (words, lines) in collected.iter_mut().zip((0..3).flat_map(|_| &rounds)) {
             let k: Vec<Block> = lines.iter().map(|line| share(line, net)).collect();
-            round(&mut x, &k);
+            round(&mut x, &mut memory, &k);
             let last = sub(8, x[0], x[5]);
             let m = k[..6].iter().fold(Block::MAX, |all, line| all & line);
             words[0] |= (0..16).map(|i| u64::from(top(last, 8, i)) << i).sum::<u64>() << (16 * net);
             words[1] |= bits(x[0], x[3], m, k[1] & k[6]) << (16 * net);
+        }
+        for (j, stored) in memory.into_iter().enumerate() {
+            x[2 * j] = add(64, x[2 * j], stored);
         }
         for (block, value) in x.into_iter().enumerate() {
             out[8 * block + 2 * net] = value as u64;

@@ -85,7 +85,7 @@ macro_rules! memory {
         #[doc = concat!("`", $mnemonic, "`, storing over `under`")]
         #[inline]
         #[target_feature(enable = "avx2")]
-        pub fn $put(under: V, m: V, v: V, line: &mut Line, at: usize) -> V {
+        pub fn $put(under: V, m: V, v: V, line: &mut Line, at: usize) {
             store(line, at, under);
             let to: &mut [u8; WIDTH] = line.0[at..].first_chunk_mut().expect("a line has four nets");
             // SAFETY: writes no more than the slice's 32 bytes
@@ -93,7 +93,6 @@ macro_rules! memory {
                 std::arch::asm!(concat!($mnemonic, " [{p}], {m}, {v}"), p = in(reg) to, m = in(ymm_reg) m,
                     v = in(ymm_reg) v, options(nostack, preserves_flags));
             }
-            load(line, at)
         }
     )*};
 }

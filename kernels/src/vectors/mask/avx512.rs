@@ -113,7 +113,7 @@ macro_rules! memory {
         #[doc = concat!("`", $mnemonic, "`, storing over `under` under a mask")]
         #[inline]
         #[target_feature(enable = "avx512f,avx512bw,avx512dq,avx512vl")]
-        pub fn $put(under: V, m: V, v: V, line: &mut Line, at: usize) -> V {
+        pub fn $put(under: V, m: V, v: V, line: &mut Line, at: usize) {
             store(line, at, under);
             // SAFETY: writes no more than the line's 64 bytes
             unsafe {
@@ -121,7 +121,6 @@ macro_rules! memory {
                     p = in(reg) &mut *line, m = in(zmm_reg) m, v = in(zmm_reg) v, k = out(kreg) _,
                     options(nostack, preserves_flags));
             }
-            load(line, at)
         }
     )*};
 }

@@ -95,12 +95,11 @@ macro_rules! memory {
             $select(_mm_setzero_si128(), load(line, at), m)
         }
 
-        #[doc = concat!("[`", stringify!($select), "`] of what lies in memory and v.")]
+        #[doc = concat!("[`", stringify!($select), "`] of u and v into memory.")]
         #[inline]
         #[target_feature(enable = "sse2")]
-        pub fn $put(under: V, m: V, v: V, line: &mut Line, at: usize) -> V {
+        pub fn $put(under: V, m: V, v: V, line: &mut Line, at: usize) {
             store(line, at, $select(under, v, m));
-            load(line, at)
         }
     )*};
 }
