@@ -1,12 +1,13 @@
 //! `vector.integer`: more than a hundred integer operations of the vector units, each result kept.
 //!
-//! Four nets, each a Feistel network of eight blocks of 16 bytes. A round ([`integer_round!`](crate::integer_round) is the
-//! exact statement) lets every operation of [`crate::vectors`] act on blocks 4 to 7 and on operands, and adds, subtracts or
-//! xors each result to a block of 0 to 3; then the same the other way round. Every such update is a bijection of the block
-//! that takes it in, so whatever an operation gets wrong stays, and spreads to all blocks within two rounds, even where
-//! the operation itself saturates or compares and would have swallowed it. The accumulating instructions are of the subject
-//! themselves: `paddb` to `psubq` and `pxor`. Once a round the signs of one vector's bytes (`pmovmskb`) go into a word, 16
-//! bits a net; the words are digested as h ← rotl(h, 29)·c + word, a bijection in both.
+//! Four nets, each of eight blocks of 16 bytes. A round ([`integer_round!`](crate::integer_round) is the exact statement)
+//! adds, subtracts or xors the results of the operations of [`crate::vectors`] to the blocks, in groups of two; each group
+//! takes in functions of operands and of the two groups whose turn is the longest ago, so that no group waits for the one
+//! before it. Every such update is a bijection of the block that takes it in, so whatever an operation gets wrong stays,
+//! and spreads to all blocks within two rounds, even where the operation itself saturates or compares and would have
+//! swallowed it. The accumulating instructions are of the subject themselves: `paddb` to `psubq` and `pxor`. Once a round
+//! the signs of one vector's bytes (`pmovmskb`) go into a word, 16 bits a net; the words are digested as
+//! h ← rotl(h, 29)·c + word, a bijection in both.
 //!
 //! Comparisons for equality would find nothing equal in random data: they compare a minimum or maximum with one of the
 //! two that it was taken of, or a row of elements with one that it was made of.
