@@ -1,8 +1,9 @@
 //! One round of `vector.integer`, in words that every instruction set's module knows.
 
-/// One round on the blocks `$x[0]` … `$x[7]`; `$y` is `$x` again, but where only speed matters. `$k!(i)` is the i-th line of operands, `$k!(f i)` the line widened by `f`,
-/// `$k!(count j)` the j-th count.Groups of two blocks take turns; each
-/// takes in functions of operands and of the two groups whose turn is the longest ago. Gives the vector whose signs go into the output.
+/// One round on the blocks `$x[0]` … `$x[7]`; `$y` is `$x` again, but where only speed matters. `$k!(i)` is the i-th line
+/// of operands, `$k!(f i)` the line widened by `f`, `$k!(count j)` the j-th count. Groups of two blocks take turns; each
+/// takes in functions of operands and of the two groups whose turn is the longest ago. Gives the vector whose signs go
+/// into the output.
 #[doc(hidden)]
 #[macro_export]
 macro_rules! integer_round {
