@@ -18,6 +18,7 @@ use yardsticks::Yardstick;
 /// Kernel, variant (every one if none is named), least ratio to the yardstick.
 const RATIOS: &[(&str, Option<Variant>, f64)] = &[
     ("integer.multiply", None, 0.90),
+    ("vector.integer", None, 0.90),
     ("fma.chain32", Some(Variant::Avx2), 0.95),
     ("fma.chain64", Some(Variant::Avx2), 0.95),
     ("fma.matmul32", Some(Variant::Avx2), 0.85),

@@ -18,5 +18,6 @@ pub mod operands;
 pub mod string;
 pub mod sync;
 pub mod vector;
+pub mod vectors;
 
 pub use kernel::{Build, Case, Kernel, Proven, Ready, Roles, Seed, Size, Variant, Work};

@@ -37,7 +37,11 @@ mod memory_march;
 mod memory_stream;
 mod memory_walk;
 mod string_copy;
+mod vector_dot8;
 mod vector_gather;
+mod vector_integer;
+mod vector_mask;
+mod vector_permute;
 mod vector_shuffle;
 
 /// The bare loop beside one variant of one kernel.
@@ -82,6 +86,10 @@ pub fn all() -> Vec<Yardstick> {
         fma_mixed::yardsticks(),
         vector_shuffle::yardsticks(),
         vector_gather::yardsticks(),
+        vector_integer::yardsticks(),
+        vector_permute::yardsticks(),
+        vector_dot8::yardsticks(),
+        vector_mask::yardsticks(),
         cipher_aes::yardsticks(),
         cipher_sha256::yardsticks(),
         string_copy::yardsticks(),
