@@ -26,6 +26,8 @@ pub static PLAN: &[(&str, &[(u32, u64)])] = &[
     ("cache.walk", &[(256, 64), (16, 64), (4096, 64)]),
     ("memory.march", &[(1024, 64), (32, 64), (4096, 64)]),
     ("memory.copy", &[(384, 64), (24, 64), (3072, 64)]),
+    ("sync.counter", &[(25, 64)]),
+    ("sync.lock", &[(9, 64)]),
 ];
 
 macro_rules! embed {
@@ -52,6 +54,8 @@ pub static TABLES: &[(&str, &str)] = embed![
     "cache.walk",
     "memory.march",
     "memory.copy",
+    "sync.counter",
+    "sync.lock",
 ];
 
 /// SHA-256 of each table, in the format of `sha256sum`.

@@ -20,6 +20,8 @@ pub static KERNELS: &[&dyn Kernel] = &[
     &crate::cache::walk::Walk,
     &crate::memory::march::March,
     &crate::memory::copy::Copy,
+    &crate::sync::counter::Counter,
+    &crate::sync::lock::Locks,
 ];
 
 /// The kernel with this id.

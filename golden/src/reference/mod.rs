@@ -36,6 +36,8 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("cache.walk", cache::walk::words),
     ("memory.march", memory::march::words),
     ("memory.copy", memory::copy::words),
+    ("sync.counter", sync::counter::words),
+    ("sync.lock", sync::lock::words),
 ];
 
 /// The right output of `case`, computed now; `None` for an unknown kernel.
