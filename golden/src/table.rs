@@ -28,6 +28,8 @@ pub static PLAN: &[(&str, &[(u32, u64)])] = &[
     ("memory.copy", &[(384, 64), (24, 64), (3072, 64)]),
     ("sync.counter", &[(25, 64)]),
     ("sync.lock", &[(9, 64)]),
+    ("sync.pingpong", &[(21, 64)]),
+    ("sync.ordering", &[(19, 64)]),
 ];
 
 macro_rules! embed {
@@ -56,6 +58,8 @@ pub static TABLES: &[(&str, &str)] = embed![
     "memory.copy",
     "sync.counter",
     "sync.lock",
+    "sync.pingpong",
+    "sync.ordering",
 ];
 
 /// SHA-256 of each table, in the format of `sha256sum`.

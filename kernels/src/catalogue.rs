@@ -22,6 +22,8 @@ pub static KERNELS: &[&dyn Kernel] = &[
     &crate::memory::copy::Copy,
     &crate::sync::counter::Counter,
     &crate::sync::lock::Locks,
+    &crate::sync::pingpong::PingPong,
+    &crate::sync::ordering::MemoryOrder,
 ];
 
 /// The kernel with this id.

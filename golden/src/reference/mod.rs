@@ -38,6 +38,8 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("memory.copy", memory::copy::words),
     ("sync.counter", sync::counter::words),
     ("sync.lock", sync::lock::words),
+    ("sync.pingpong", sync::pingpong::words),
+    ("sync.ordering", sync::ordering::words),
 ];
 
 /// The right output of `case`, computed now; `None` for an unknown kernel.

@@ -3,3 +3,5 @@
 pub mod common_words;
 pub mod counter;
 pub mod lock;
+pub mod ordering;
+pub mod pingpong;
