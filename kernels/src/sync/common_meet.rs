@@ -32,15 +32,19 @@ fn give_way() {
     std::thread::yield_now();
 }
 
+/// Spins that a role waits at most for its partner to draw level.
+const LEVEL: u32 = 64;
+
 /// Where the roles meet: each counts its arrivals on a line of its own.
 pub struct Meeting {
     arrived: [Apart<AtomicU64>; 2],
+    paced: [Apart<AtomicU64>; 2],
 }
 
 impl Meeting {
     /// Nobody has arrived.
     pub fn new() -> Meeting {
-        Meeting { arrived: [Apart(AtomicU64::new(0)), Apart(AtomicU64::new(0))] }
+        Meeting { arrived: Default::default(), paced: Default::default() }
     }
 
     /// Arrives as `role` and waits until the partner has arrived as often. What either did before, both see after.
@@ -50,6 +54,20 @@ impl Meeting {
         let count = self.arrived[role].0.load(Ordering::Relaxed) + 1;
         self.arrived[role].0.store(count, Ordering::Release);
         wait(|| self.arrived[1 - role].0.load(Ordering::Acquire) >= count);
+    }
+
+    /// Counts a step of `role` and waits a little for the partner to take as many: keeps roles abreast that both have a cpu,
+    /// and holds up nobody whose partner has none. Nothing may rest on it, and it orders nothing.
+    #[inline(always)]
+    pub fn draw_level(&self, role: usize) {
+        let count = self.paced[role].0.load(Ordering::Relaxed) + 1;
+        self.paced[role].0.store(count, Ordering::Relaxed);
+        for _ in 0..LEVEL {
+            if self.paced[1 - role].0.load(Ordering::Relaxed) >= count {
+                break;
+            }
+            spin_loop();
+        }
     }
 
     /// How often both have arrived.

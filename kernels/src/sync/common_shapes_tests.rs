@@ -16,14 +16,14 @@ struct Machine {
 /// What the machine makes of fences: with `fences` false they do nothing.
 fn steps(threads: &[[Op; 3]; 2], now: &Machine, fences: bool) -> Vec<Machine> {
     let mut after = Vec::new();
-    for role in 0..2 {
+    for (role, thread) in threads.iter().enumerate() {
         if let Some(&(place, value)) = now.queues[role].first() {
             let mut then = now.clone();
             then.queues[role].remove(0);
             then.memory[place] = value;
             after.push(then);
         }
-        let Some(&op) = threads[role].get(now.next[role]) else { continue };
+        let Some(&op) = thread.get(now.next[role]) else { continue };
         let mut then = now.clone();
         then.next[role] += 1;
         let drained = now.queues[role].is_empty() || !fences;

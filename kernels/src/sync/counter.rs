@@ -46,6 +46,9 @@ use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Wo
 use crate::operands::Operands;
 
 const ROUNDS: usize = 32;
+/// Rounds of one width that a role does before it turns to the next width.
+const STRETCH: usize = 8;
+const _: () = assert!(ROUNDS.is_multiple_of(STRETCH));
 const WIDTHS: usize = 4;
 /// Operand words of one width in a round.
 const FORMS: usize = 11;
@@ -306,33 +309,53 @@ fn round<W: Width, A: Locked<W>>(a: A, cells: &Cells<W>, role: usize, x: &[u64],
     }
 }
 
-/// All rounds of one role.
+/// All rounds of one role, in stretches; which operations come first changes no output word.
 #[inline(always)]
 fn hammer<A: Atoms>(a: A, shared: &Shared, role: usize, operands: &[[u64; ROUND]], view: &mut View) {
     let mut last = None;
-    for x in operands {
-        let (widths, wide) = x.split_at(WIDTHS * FORMS);
-        let (widths, _) = widths.as_chunks::<FORMS>();
-        let View { not_rising, foreign, widths: seen, sums } = view;
-        round(a, &shared.bytes, role, &widths[0], foreign, &mut seen[0]);
-        round(a, &shared.words, role, &widths[1], foreign, &mut seen[1]);
-        round(a, &shared.doubles, role, &widths[2], foreign, &mut seen[2]);
-        round(a, &shared.quads, role, &widths[3], foreign, &mut seen[3]);
-
-        let ticket: u64 = a.exchange_add(&shared.ticket.0, 1);
-        // as a difference, because the start may be just below 2⁶⁴
-        let rises = last.is_none_or(|last| ticket.wrapping_sub(last) as i64 > 0);
-        *not_rising += u64::from(!rises);
-        last = Some(ticket);
-        sums[0] = sums[0].wrapping_add(mix(ticket.wrapping_add(1))).wrapping_sub(mix(ticket));
-        let (halves, pair) = &shared.wide.0;
-        let old = a.halves_add(halves, wide[0]);
-        sums[1] = sums[1].wrapping_add(mix(old.wrapping_add(wide[0]))).wrapping_sub(mix(old));
-        let old = a.pair_add(pair, [wide[1], wide[2]]);
-        for i in 0..2 {
-            sums[2 + i] = sums[2 + i].wrapping_add(mix(old[i].wrapping_add(wide[1 + i]))).wrapping_sub(mix(old[i]));
+    // several rounds of one width at a stretch, and both roles abreast: otherwise the second would walk behind the first, a
+    // line apart, and the two would seldom want the same line
+    let (stretches, _) = operands.as_chunks::<STRETCH>();
+    for stretch in stretches {
+        for x in stretch {
+            shared.meeting.draw_level(role);
+            round(a, &shared.bytes, role, &x[..FORMS], &mut view.foreign, &mut view.widths[0]);
+        }
+        for x in stretch {
+            shared.meeting.draw_level(role);
+            round(a, &shared.words, role, &x[FORMS..2 * FORMS], &mut view.foreign, &mut view.widths[1]);
+        }
+        for x in stretch {
+            shared.meeting.draw_level(role);
+            round(a, &shared.doubles, role, &x[2 * FORMS..3 * FORMS], &mut view.foreign, &mut view.widths[2]);
+        }
+        for x in stretch {
+            shared.meeting.draw_level(role);
+            round(a, &shared.quads, role, &x[3 * FORMS..4 * FORMS], &mut view.foreign, &mut view.widths[3]);
+        }
+        for x in stretch {
+            last = Some(draw(a, shared, &x[4 * FORMS..], last, view));
         }
     }
+}
+
+/// A ticket, and one round of halves and pair; the ticket.
+#[inline(always)]
+fn draw<A: Atoms>(a: A, shared: &Shared, wide: &[u64], last: Option<u64>, view: &mut View) -> u64 {
+    let View { not_rising, sums, .. } = view;
+    let ticket: u64 = a.exchange_add(&shared.ticket.0, 1);
+    // as a difference, because the start may be just below 2⁶⁴
+    let rises = last.is_none_or(|last| ticket.wrapping_sub(last) as i64 > 0);
+    *not_rising += u64::from(!rises);
+    sums[0] = sums[0].wrapping_add(mix(ticket.wrapping_add(1))).wrapping_sub(mix(ticket));
+    let (halves, pair) = &shared.wide.0;
+    let old = a.halves_add(halves, wide[0]);
+    sums[1] = sums[1].wrapping_add(mix(old.wrapping_add(wide[0]))).wrapping_sub(mix(old));
+    let old = a.pair_add(pair, [wide[1], wide[2]]);
+    for i in 0..2 {
+        sums[2 + i] = sums[2 + i].wrapping_add(mix(old[i].wrapping_add(wide[1 + i]))).wrapping_sub(mix(old[i]));
+    }
+    ticket
 }
 
 #[inline(never)]

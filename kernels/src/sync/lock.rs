@@ -110,7 +110,7 @@ impl Kernel for Locks {
                 Build {
                     variant: Variant::Neon,
                     needs: &[Feature::Neon, Feature::ArmLse],
-                    marks: &["ldadd", "swp", "cas", "ldset", "dmb", "umlal"],
+                    marks: &["ldadd", "swp", "cas", "ldset", "dmb", "umull"],
                     proven: Proven::Emulator,
                 },
             ]
@@ -261,21 +261,26 @@ fn roles(case: &Case, variant: Variant) -> (Arc<Shared>, [Role; 2]) {
     (shared, roles)
 }
 
+/// One update. Both roles come to the lock at about the same time, or the second would walk behind the first, a lock apart.
 #[inline(always)]
-fn update<A: Atoms, L: Lock>(a: A, guarded: &Guarded<L>, role: usize, x: u64, seen: &mut Seen) {
-    let (torn, before, after) = guarded.hold(a, role, |setup, record| {
-        let mut torn = setup.torn(record);
-        let before = record.sum;
-        for (word, &number) in record.words.iter_mut().zip(&setup.numbers) {
-            *word = word.wrapping_add(x).wrapping_add(u64::from(number));
-        }
-        record.count = record.count.wrapping_add(1);
-        record.sum = before.wrapping_add(x);
-        // another look, at what is in memory rather than in registers: a partner that came in between shows at once
-        torn += setup.torn(std::hint::black_box(record));
-        (torn, before, record.sum)
-    });
-    seen.torn += torn;
+fn update<A: Atoms, L: Lock>(a: A, meeting: &Meeting, guarded: &Guarded<L>, role: usize, x: u64, seen: &mut Seen) {
+    let setup = &guarded.setup;
+    meeting.draw_level(role);
+    guarded.lock.0.take(a, role);
+    // SAFETY: the lock is held, and taking it ordered this after all that the last holder did
+    let record = unsafe { &mut *guarded.record.get() };
+    seen.torn += setup.torn(record);
+    let before = record.sum;
+    for (word, &number) in record.words.iter_mut().zip(&setup.numbers) {
+        *word = word.wrapping_add(x).wrapping_add(u64::from(number));
+    }
+    record.count = record.count.wrapping_add(1);
+    record.sum = before.wrapping_add(x);
+    // another look, at what is in memory rather than in registers: a partner that came in between shows at once
+    let record = std::hint::black_box(record);
+    seen.torn += setup.torn(record);
+    let after = record.sum;
+    guarded.lock.0.release(a, role);
     seen.added = seen.added.wrapping_add(x);
     seen.telescoped = seen.telescoped.wrapping_add(mix(after)).wrapping_sub(mix(before));
 }
@@ -288,12 +293,13 @@ fn end<A: Atoms, L: Lock>(a: A, guarded: &Guarded<L>, role: usize) -> End {
 #[inline(always)]
 fn contend<A: Atoms>(a: A, shared: &Shared, role: usize, operands: &[[u64; LOCKS]]) -> ([Seen; LOCKS], [End; LOCKS]) {
     let mut seen = [Seen::default(); LOCKS];
+    let meeting = &shared.meeting;
     for x in operands {
-        update(a, &shared.swap, role, x[0], &mut seen[0]);
-        update(a, &shared.ticket, role, x[1], &mut seen[1]);
-        update(a, &shared.bit, role, x[2], &mut seen[2]);
-        update(a, &shared.queue, role, x[3], &mut seen[3]);
-        update(a, &shared.fence, role, x[4], &mut seen[4]);
+        update(a, meeting, &shared.swap, role, x[0], &mut seen[0]);
+        update(a, meeting, &shared.ticket, role, x[1], &mut seen[1]);
+        update(a, meeting, &shared.bit, role, x[2], &mut seen[2]);
+        update(a, meeting, &shared.queue, role, x[3], &mut seen[3]);
+        update(a, meeting, &shared.fence, role, x[4], &mut seen[4]);
     }
     for (cell, seen) in shared.told[role].0.iter().zip(&seen) {
         cell.store(seen.telescoped, Ordering::Relaxed);

@@ -167,21 +167,33 @@ fn step<A: Access>(a: A, op: Op, places: &[Spot; 2], bases: &[u64; 2], registers
     }
 }
 
+/// A few cycles, by the top bits of a word: who is first, and by how much, changes from one iteration to the next.
+#[inline(always)]
+fn dally(word: u64) {
+    for _ in 0..word >> 58 {
+        // SAFETY: does nothing
+        unsafe { std::arch::asm!("nop", "nop", "nop", "nop", options(nomem, nostack, preserves_flags)) };
+    }
+}
+
 /// All iterations of one role's thread of one shape: straight code, no test of what comes next between two accesses.
 #[inline(always)]
 fn thread<A: Access, const SHAPE: usize, const ROLE: usize>(
     a: A,
-    arena: &Arena,
-    bases: &[[u64; 2]; TIMES],
+    shared: &Shared,
+    places: &[[Spot; 2]; TIMES],
 ) -> Registers {
     let [first, second, third] = const { SHAPES[SHAPE].threads[ROLE] };
-    std::array::from_fn(|i| {
-        let mut registers = [0; 2];
-        step(a, first, &arena.places[i], &bases[i], &mut registers);
-        step(a, second, &arena.places[i], &bases[i], &mut registers);
-        step(a, third, &arena.places[i], &bases[i], &mut registers);
-        registers
-    })
+    let mut all = [[0; 2]; TIMES];
+    // a loop rather than a closure: that would be a function of its own, without the features of its caller
+    for ((registers, places), bases) in all.iter_mut().zip(places).zip(&shared.bases[SHAPE]) {
+        shared.meeting.draw_level(ROLE);
+        dally(bases[ROLE]);
+        step(a, first, places, bases, registers);
+        step(a, second, places, bases, registers);
+        step(a, third, places, bases, registers);
+    }
+    all
 }
 
 /// Which place each register of a thread is loaded from.
@@ -221,8 +233,8 @@ fn judge(shape: &Shape, role: usize, arena: &Arena, bases: &[[u64; 2]; TIMES]) -
                 }
             }
         }
-        for place in 0..2 {
-            let word = arena.places[i][place].value.load(Ordering::Relaxed);
+        for (place, spot) in arena.places[i].iter().enumerate() {
+            let word = spot.value.load(Ordering::Relaxed);
             let (end, odd) = number(word, base[place]);
             outcome.ends[place] = end;
             foreign += u64::from(end == FOREIGN);
@@ -245,8 +257,8 @@ fn shape<A: Access, const SHAPE: usize>(a: A, shared: &Shared, role: usize, out:
     }
     shared.meeting.meet(role);
     let registers = match role {
-        0 => thread::<A, SHAPE, 0>(a, arena, bases),
-        _ => thread::<A, SHAPE, 1>(a, arena, bases),
+        0 => thread::<A, SHAPE, 0>(a, shared, &arena.places),
+        _ => thread::<A, SHAPE, 1>(a, shared, &arena.places),
     };
     for (cells, words) in arena.told[role].0.iter().zip(registers) {
         for (cell, word) in cells.iter().zip(words) {

@@ -83,7 +83,7 @@ impl Kernel for PingPong {
                 Build {
                     variant: Variant::Portable,
                     needs: &[],
-                    marks: &["movnti", "movntdq", "sfence", "clflush", "mfence", "xchg", "paddq", "psrlq"],
+                    marks: &["movnti", "movntdq", "sfence", "clflush", "mfence", "xchg", "rol"],
                     proven: Proven::Hardware,
                 },
                 Build {
@@ -245,8 +245,14 @@ impl<F: Fault> Player<'_, F> {
             // SAFETY: it is this role's turn
             let mut received = unsafe { *ball.words.get() };
             fault.received(role, kind, step, &mut received);
-            let mut made: [u64; N] =
-                std::array::from_fn(|j| received[(j + 1) % N].wrapping_add(k[j % 8]).rotate_left(23));
+            let mut made = [0; N];
+            made[..N - 1].copy_from_slice(&received[1..]);
+            made[N - 1] = received[0];
+            for words in made.chunks_mut(k.len()) {
+                for (word, k) in words.iter_mut().zip(k) {
+                    *word = word.wrapping_add(*k).rotate_left(23);
+                }
+            }
             fault.made(role, kind, step, &mut made);
             let [of_received, of_made] = &mut digests[step / QUARTER];
             for (&r, &m) in received.iter().zip(&made) {
