@@ -12,7 +12,8 @@ pub struct Apart<T>(pub T);
 /// does not come to it there; but where both roles share one cpu the partner cannot go on before the waiter lets it.
 const PATIENCE: u32 = 1000;
 
-/// Spins until `done`. There is no time-out: a partner that has been descheduled is only slow.
+/// Spins until `done`. There is no time-out: a partner that has been descheduled is only slow. Where a fault lost what is
+/// waited for, the wait has no end: whoever runs the pair has to give it a deadline, and to take its expiry for an outcome.
 #[inline(always)]
 pub fn wait(mut done: impl FnMut() -> bool) {
     let mut spins = 0;

@@ -39,8 +39,9 @@
 use std::sync::Arc;
 use std::sync::atomic::{AtomicU64, Ordering};
 
-use super::common_atoms::{Atoms, Locked, Pair, Width};
-use super::common_meet::{Apart, Meeting, chain, mix};
+use super::common_atoms::{Atoms, Pair, Width};
+use super::common_counter::{Cells, FORMS, STARTS, Seen, ends, round};
+use super::common_meet::{Apart, Meeting, mix};
 use crate::isa::Proof;
 use crate::kernel::{Build, Case, Kernel, Proven, Ready, Roles, Size, Variant, Work};
 use crate::operands::Operands;
@@ -50,12 +51,8 @@ const ROUNDS: usize = 32;
 const STRETCH: usize = 8;
 const _: () = assert!(ROUNDS.is_multiple_of(STRETCH));
 const WIDTHS: usize = 4;
-/// Operand words of one width in a round.
-const FORMS: usize = 11;
 /// Operand words of one role in a round.
 const ROUND: usize = WIDTHS * FORMS + 3;
-/// Starts of one width.
-const STARTS: usize = 10;
 /// Locked operations of one width in a round, and of all widths with ticket, halves and pair.
 const OPERATIONS: usize = 19 * WIDTHS + 3;
 /// Words of one role's output.
@@ -131,35 +128,6 @@ impl Kernel for Counter {
     }
 }
 
-/// The counters of one width.
-#[repr(C, align(64))]
-#[derive(Debug)]
-struct Cells<W: Width> {
-    up: W::Cell,
-    down: W::Cell,
-    bits: W::Cell,
-    not: W::Cell,
-    neg: W::Cell,
-    taken: W::Cell,
-    compared: W::Cell,
-    swapped: W::Cell,
-    pieces: [W::Cell; 2],
-}
-
-impl<W: Width> Cells<W> {
-    fn new() -> Cells<W> {
-        let [up, down, bits, not, neg, taken, compared, swapped, a, b] = std::array::from_fn(|_| W::cell(W::cut(0)));
-        Cells { up, down, bits, not, neg, taken, compared, swapped, pieces: [a, b] }
-    }
-
-    fn start(&self, from: &[u64]) {
-        let Cells { up, down, bits, not, neg, taken, compared, swapped, pieces: [a, b] } = self;
-        for (cell, &word) in [up, down, bits, not, neg, taken, compared, swapped, a, b].into_iter().zip(from) {
-            W::store(cell, W::cut(word));
-        }
-    }
-}
-
 /// What both roles have.
 struct Shared {
     meeting: Meeting,
@@ -231,17 +199,6 @@ fn roles(case: &Case, variant: Variant) -> (Arc<Shared>, [Role; 2]) {
     (shared, roles)
 }
 
-/// What one role has seen in one width.
-#[derive(Clone, Copy, Default)]
-struct Seen {
-    own_bits: u64,
-    piece: u64,
-    /// up, down, taken, compared
-    added: [u64; 4],
-    /// Sums of h: taken, compared, swapped.
-    sums: [u64; 3],
-}
-
 /// What one role has seen.
 #[derive(Default)]
 struct View {
@@ -250,63 +207,6 @@ struct View {
     widths: [Seen; WIDTHS],
     /// Sums of h: ticket, halves, two of pair.
     sums: [u64; 4],
-}
-
-/// One round in one width.
-#[inline(always)]
-fn round<W: Width, A: Locked<W>>(a: A, cells: &Cells<W>, role: usize, x: &[u64], foreign: &mut u64, seen: &mut Seen) {
-    let own = 0x5555_5555_5555_5555 << role;
-    let [add, adc, sub, sbb, or, and, xor, numbers, take, compare, swap] = *x else {
-        unreachable!("a round of one width has {FORMS} words");
-    };
-    a.add(&cells.up, W::cut(add));
-    a.inc(&cells.up);
-    a.adc(&cells.up, W::cut(adc));
-
-    let bit = |place: u32| (numbers >> (8 * place)) as u32 % (W::BITS / 2) * 2 + role as u32;
-    let mut look = |old: bool| {
-        seen.own_bits = chain(seen.own_bits, W::load(&cells.bits).word() & own | u64::from(old) << 63 >> role)
-    };
-    a.or(&cells.bits, W::cut(or & own));
-    look(false);
-    a.and(&cells.bits, W::cut(and | !own));
-    look(false);
-    a.xor(&cells.bits, W::cut(xor & own));
-    look(false);
-    look(a.set(&cells.bits, bit(0)));
-    look(a.clear(&cells.bits, bit(1)));
-    look(a.toggle(&cells.bits, bit(2)));
-
-    a.sub(&cells.down, W::cut(sub));
-    a.dec(&cells.down);
-    a.sbb(&cells.down, W::cut(sbb));
-
-    let before = W::load(&cells.not).word();
-    a.not(&cells.not);
-    let after = W::load(&cells.not).word();
-    *foreign += u64::from(after != before && after != W::cut(!before).word());
-    let before = W::load(&cells.neg).word();
-    a.neg(&cells.neg);
-    let after = W::load(&cells.neg).word();
-    *foreign += u64::from(after != before && after != W::cut(before.wrapping_neg()).word());
-
-    a.not(&cells.pieces[role]);
-    seen.piece = chain(seen.piece, W::load(&cells.pieces[role]).word());
-    a.neg(&cells.pieces[role]);
-    seen.piece = chain(seen.piece, W::load(&cells.pieces[role]).word());
-
-    let next = |old: W, x: u64| W::cut(old.word().wrapping_add(x)).word();
-    let old = a.exchange_add(&cells.taken, W::cut(take));
-    seen.sums[0] = seen.sums[0].wrapping_add(mix(next(old, take))).wrapping_sub(mix(old.word()));
-    let old = a.compare_add(&cells.compared, W::cut(compare));
-    seen.sums[1] = seen.sums[1].wrapping_add(mix(next(old, compare))).wrapping_sub(mix(old.word()));
-    let old = a.swap(&cells.swapped, W::cut(swap));
-    seen.sums[2] = seen.sums[2].wrapping_add(mix(old.word()));
-
-    let added = [add.wrapping_add(adc).wrapping_add(2), sub.wrapping_add(sbb).wrapping_add(2), take, compare];
-    for (sum, x) in seen.added.iter_mut().zip(added) {
-        *sum = sum.wrapping_add(x);
-    }
 }
 
 /// All rounds of one role, in stretches; which operations come first changes no output word.
@@ -400,12 +300,6 @@ fn run_neon(shared: &Shared, role: usize, operands: &[[u64; ROUND]], view: &mut 
     unsafe { neon(shared, role, operands, view) }
 }
 
-/// The end values of one width but for `swapped`.
-fn ends<W: Width>(cells: &Cells<W>) -> [u64; 7] {
-    let Cells { up, down, bits, not, neg, taken, compared, .. } = cells;
-    [up, down, bits, not, neg, taken, compared].map(|cell| W::load(cell).word())
-}
-
 impl Ready for Role {
     fn run(&mut self, out: &mut [u64]) {
         let Role { shared, role, operands, run } = self;
@@ -462,70 +356,5 @@ impl Ready for Role {
 }
 
 #[cfg(test)]
-mod tests {
-    use super::super::common_meet::tests::{case, disturbed, every_variant_agrees};
-    use super::*;
-
-    #[test]
-    fn variants_and_runs_agree_whatever_the_order() {
-        let out = every_variant_agrees(&Counter);
-        let (first, second) = out.split_at(HALF);
-        assert_eq!(first[..2], [0, 0]);
-        // what both see of the shared counters is the same
-        assert_eq!(first[26..], second[26..]);
-        assert!((2..26).all(|i| first[i] != second[i]), "each role has operands of its own");
-    }
-
-    fn stray(at: impl Fn(&Shared) + Sync) -> (Vec<u64>, Vec<u64>) {
-        let right = every_variant_agrees(&Counter);
-        let (shared, roles) = roles(&case(&Counter), Variant::Portable);
-        let roles = roles.map(|role| Box::new(role) as Box<dyn Ready>);
-        let wrong = disturbed(roles, &right, &shared.meeting, 2000, || at(&shared)).expect("a stray write shows");
-        (right, wrong)
-    }
-
-    /// Words of the half that differ, without regard to whose.
-    fn differing(right: &[u64], wrong: &[u64]) -> Vec<usize> {
-        let mut words: Vec<usize> = (0..2 * HALF).filter(|&i| right[i] != wrong[i]).map(|i| i % HALF).collect();
-        words.sort_unstable();
-        words.dedup();
-        words
-    }
-
-    #[test]
-    fn a_stray_addition_shows_in_the_end_value() {
-        let (right, wrong) = stray(|shared| {
-            shared.quads.up.fetch_add(1 << 40, Ordering::Relaxed);
-        });
-        assert_eq!(differing(&right, &wrong), [47], "up in 64 bits");
-    }
-
-    #[test]
-    fn a_stray_exchange_shows_in_the_sum_over_both_roles() {
-        let (right, wrong) = stray(|shared| {
-            shared.doubles.swapped.store(7, Ordering::Relaxed);
-        });
-        assert_eq!(differing(&right, &wrong), [62], "swapped in 32 bits");
-    }
-
-    #[test]
-    fn a_stray_bit_shows_in_the_digest_of_its_owner_alone() {
-        let (right, wrong) = stray(|shared| {
-            // odd bits belong to role 1
-            shared.words.bits.fetch_xor(0xaaaa, Ordering::Relaxed);
-        });
-        assert_eq!(right[3], wrong[3], "digest of role 0 in 16 bits");
-        assert!(
-            right[HALF + 3] != wrong[HALF + 3] || differing(&right, &wrong) == [35],
-            "digest of role 1 or the end value"
-        );
-    }
-
-    #[test]
-    fn a_ticket_handed_out_twice_shows() {
-        let (right, wrong) = stray(|shared| {
-            shared.ticket.0.fetch_sub(1, Ordering::Relaxed);
-        });
-        assert!(differing(&right, &wrong).contains(&66), "end of the ticket");
-    }
-}
+#[path = "common_counter_tests.rs"]
+mod tests;

@@ -10,6 +10,7 @@ pub mod common_atoms_arm;
 #[cfg(target_arch = "x86_64")]
 pub mod common_atoms_x86;
 pub mod common_carry;
+mod common_counter;
 pub mod common_locks;
 pub mod common_meet;
 pub mod common_shapes;
