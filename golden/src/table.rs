@@ -46,6 +46,10 @@ pub static PLAN: &[(&str, &[(u32, u64)])] = &[
     ("memory.copy", &[(384, 64), (24, 64), (3072, 64)]),
     ("memory.stream", &[(384, 64), (24, 64), (4096, 64), (32_768, 64)]),
     ("memory.walk", &[(4096, 64), (256, 64), (32_768, 64)]),
+    ("sync.counter", &[(25, 64)]),
+    ("sync.lock", &[(9, 64)]),
+    ("sync.pingpong", &[(21, 64)]),
+    ("sync.ordering", &[(19, 64)]),
 ];
 
 macro_rules! embed {
@@ -92,6 +96,10 @@ pub static TABLES: &[(&str, &str)] = embed![
     "memory.copy",
     "memory.stream",
     "memory.walk",
+    "sync.counter",
+    "sync.lock",
+    "sync.pingpong",
+    "sync.ordering",
 ];
 
 /// SHA-256 of each table, in the format of `sha256sum`.

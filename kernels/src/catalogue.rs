@@ -40,6 +40,10 @@ pub static KERNELS: &[&dyn Kernel] = &[
     &crate::memory::copy::Copy,
     &crate::memory::stream::Stream,
     &crate::memory::walk::Walk,
+    &crate::sync::counter::Counter,
+    &crate::sync::lock::Locks,
+    &crate::sync::pingpong::PingPong,
+    &crate::sync::ordering::MemoryOrder,
 ];
 
 /// The kernel with this id.

@@ -77,7 +77,7 @@ impl Feature {
             Feature::Avx512vl => "avx512vl",
             Feature::Lzcnt => "lzcnt",
             Feature::Movbe => "movbe",
-            Feature::Cmpxchg16b => "cmpxchg16b",
+            Feature::Cmpxchg16b => "cx16",
             Feature::Gfni => "gfni",
             Feature::Prefetchw => "3dnowprefetch",
             Feature::Avx512cd => "avx512cd",

@@ -56,6 +56,10 @@ pub static REFERENCES: &[(&str, Reference)] = &[
     ("memory.copy", memory::copy::words),
     ("memory.stream", memory::stream::words),
     ("memory.walk", memory::walk::words),
+    ("sync.counter", sync::counter::words),
+    ("sync.lock", sync::lock::words),
+    ("sync.pingpong", sync::pingpong::words),
+    ("sync.ordering", sync::ordering::words),
 ];
 
 /// The right output of `case`, computed now; `None` for an unknown kernel.
