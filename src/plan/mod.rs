@@ -37,7 +37,7 @@ const LONGEST_PHASE: f64 = 30.0;
 const SWEEP_PART: f64 = 0.3;
 const SWEEP_SLICE: f64 = 0.5;
 /// Part of all core time that may be idle for the sake of settings.
-pub const IDLE_PART: f64 = 0.02;
+pub const IDLE_PART: f64 = 0.015;
 /// Part of a budget that goes to further pairs, and to heated slices.
 const PAIRS_PART: f64 = 0.04;
 const HEATED_PART: f64 = 0.03;

@@ -111,6 +111,7 @@ fn phases_fill_the_budget_and_idle_time_stays_within_its_part() {
         let idle: f64 = plan
             .phases
             .iter()
+            .filter(|p| p.aim == Aim::Setting)
             .map(|p| {
                 let cpus_busy: usize =
                     p.tracks.iter().map(|(_, s)| if s.iter().any(|s| s.partner.is_some()) { 2 } else { 1 }).sum();

@@ -12,6 +12,8 @@ use crate::condition::{Arrangement, Before, Pace, Setting};
 
 /// Seconds of the shortest slice at full pace.
 pub const SHORTEST: f64 = 0.025;
+/// The same where most other cpus rest meanwhile.
+const LONELY: f64 = 0.015;
 /// How long a core rests before a cool start.
 const REST_MS: u16 = 300;
 
@@ -67,12 +69,12 @@ pub fn others(site: &Site, budget: Duration) -> Vec<Offer> {
         .collect();
     if cpus > 1.0 {
         let solo = Setting { arrangement: Arrangement::Solo, ..plain };
-        list.push(Offer { setting: solo, slice: SHORTEST, idle: 1.0 - 1.0 / cpus });
+        list.push(Offer { setting: solo, slice: LONELY, idle: 1.0 - 1.0 / cpus });
     }
     // with one core only, or one thread a core, these are other words for what is there already
     if cores.len() > 1 && threads > 1 {
         let siblings = Setting { arrangement: Arrangement::Siblings, ..plain };
-        list.push(Offer { setting: siblings, slice: SHORTEST, idle: 1.0 - threads as f64 / cpus });
+        list.push(Offer { setting: siblings, slice: LONELY, idle: 1.0 - threads as f64 / cpus });
         let neighbours = Setting { arrangement: Arrangement::Neighbours, ..plain };
         list.push(Offer { setting: neighbours, slice: SHORTEST, idle: 1.0 - cores.len() as f64 / cpus });
     }

@@ -216,51 +216,63 @@ impl<'a> Board<'a> {
         if self.defaults.is_empty() {
             return (Vec::new(), 1);
         }
-        let n = self.brief.site.seats.len();
         // slots that cover every cell of a setting once
         let all = |offer: &Offer| {
             let groups = groups(self.brief.site, offer.setting.arrangement).len();
             groups.max(1) * self.defaults.len()
         };
-        let need = |offer: &Offer| all(offer) as f64 * offer.slice * offer.idle;
-        let needs: f64 = self.others.iter().map(need).sum();
-        let history = self.brief.history;
-        let last = |offer: &Offer| {
-            let one = |seat: usize| {
-                self.defaults.iter().map(move |&u| history.done(self.cpu(seat), self.singles[u], offer.setting).last_ms)
-            };
-            // the newest record of it on a few cpus tells when it last had its turn
-            (0..n.min(4)).flat_map(one).max().unwrap_or(0)
+        let (hot, mut cold): (Vec<Offer>, Vec<Offer>) =
+            self.others.iter().copied().partition(|o| heated(o.setting).is_some());
+        // costs no idle time, but must not crowd the rest out
+        let mut granted: Vec<(Offer, usize)> = hot
+            .into_iter()
+            .filter(|o| heated(o.setting).is_some_and(|seconds| f64::from(seconds) <= 2.0 * heated_s))
+            .map(|o| (o, (heated_s / o.slice) as usize))
+            .collect();
+        let cost = |offers: &[Offer], windows: usize| -> f64 {
+            offers.iter().map(|o| all(o).div_ceil(windows) as f64 * o.slice * o.idle).sum()
         };
-        let mut offers = self.others.clone();
-        // stable: settings that never had a turn stay in the order of their list
-        offers.sort_by_key(last);
-        let (mut idle_left, mut granted, mut windows) = (idle_s, Vec::new(), 1u64);
-        for offer in offers {
-            let cost = offer.slice * offer.idle;
-            let slots = if let Some(heating) = heated(offer.setting) {
-                // costs no idle time, but must not crowd the rest out
-                if f64::from(heating) > 2.0 * heated_s {
-                    continue;
-                }
-                (heated_s / offer.slice) as usize
-            } else {
-                let share = idle_s * need(&offer) / needs.max(1e-9);
-                let least = 2.0 * cost;
-                if least > idle_left {
-                    continue;
-                }
-                let slots = (share.max(least).min(idle_left) / cost) as usize;
-                idle_left -= slots as f64 * cost;
-                slots
+        let longest = cold.iter().map(all).max().unwrap_or(1);
+        let mut turns = 1;
+        if cost(&cold, longest) <= idle_s {
+            // the fewest windows in which the idle time of each is enough for all settings
+            let (mut too_few, mut enough) = (0, longest);
+            while enough - too_few > 1 {
+                let middle = (too_few + enough) / 2;
+                if cost(&cold, middle) <= idle_s { enough = middle } else { too_few = middle }
+            }
+            granted.extend(cold.iter().map(|o| (*o, all(o).div_ceil(enough))));
+        } else {
+            // not even one slot of each: by turns, those first that had theirs longest ago
+            let history = self.brief.history;
+            let last = |offer: &Offer| {
+                let one = |seat: usize| {
+                    let units = self.defaults.iter();
+                    units.map(move |&u| history.done(self.cpu(seat), self.singles[u], offer.setting).last_ms)
+                };
+                // the newest record of it on a few cpus tells when it last had its turn
+                (0..self.brief.site.seats.len().min(4)).flat_map(one).max().unwrap_or(0)
             };
-            // a quarter of the slots may go to what was wrong before
-            let sure = slots - if self.brief.history.any_wrong() { slots / SUSPECTS_OF } else { 0 };
-            windows = windows.max((all(&offer) as u64).div_ceil(sure.max(1) as u64));
-            granted.push((offer, slots.min(all(&offer))));
+            // stable: settings that never had a turn stay in the order of their list
+            cold.sort_by_key(last);
+            let (mut left, mut taken) = (idle_s, 0usize);
+            for offer in &cold {
+                let two = 2.0 * offer.slice * offer.idle;
+                if two <= left {
+                    left -= two;
+                    taken += 1;
+                    granted.push((*offer, 2));
+                }
+            }
+            turns = cold.len().div_ceil(taken.max(1));
         }
-        let turns = (self.others.len() as u64).div_ceil(granted.len().max(1) as u64);
-        (granted, windows * turns)
+        // a quarter of the slots may go to what was wrong before
+        let sure = |slots: usize| slots - if self.brief.history.any_wrong() { slots / SUSPECTS_OF } else { 0 };
+        let windows = granted.iter().map(|(o, slots)| all(o).div_ceil(sure(*slots).max(1))).max().unwrap_or(1);
+        for (offer, slots) in &mut granted {
+            *slots = (*slots).min(all(offer));
+        }
+        (granted, (windows * turns) as u64)
     }
 
     /// The phases of one other setting: of all its cells those that waited longest.
@@ -343,7 +355,7 @@ impl<'a> Board<'a> {
         if self.singles.is_empty() || seconds < SHORTEST {
             return Vec::new();
         }
-        let slice = (seconds / 200.0).clamp(0.1, LONGEST_SLICE.as_secs_f64() * 0.95).min(seconds);
+        let slice = (seconds / 100.0).clamp(0.1, LONGEST_SLICE.as_secs_f64() * 0.95).min(seconds);
         let count = ((seconds / slice).round() as usize).max(1);
         let chunks = (seconds / LONGEST_PHASE).ceil().max(1.0) as usize;
         let mut phases: Vec<Phase> = (0..chunks)
