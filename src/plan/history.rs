@@ -1,6 +1,6 @@
 //! What earlier windows did, as far as a plan has to know it.
 
-use std::collections::{HashMap, HashSet};
+use rustc_hash::{FxHashMap as HashMap, FxHashSet as HashSet};
 
 use super::Unit;
 use crate::condition::{Condition, Setting};
@@ -36,28 +36,37 @@ pub struct Ran {
     pub next_seed: Option<u64>,
 }
 
+/// A unit or a setting that the record knows, as a small number: a plan asks for hundreds of thousands of cells.
+type Known = u32;
+
 /// The record of earlier windows on this host and part.
 #[derive(Clone, Debug, Default)]
 pub struct History {
-    cells: HashMap<(Cpu, Unit, Setting), Done>,
-    pairs: HashMap<(Cpu, Cpu, Unit), Done>,
-    seeds: HashMap<(Cpu, Unit), u64>,
+    units: HashMap<Unit, Known>,
+    settings: HashMap<Setting, Known>,
+    cells: HashMap<(Cpu, Known, Known), Done>,
+    pairs: HashMap<(Cpu, Cpu, Known), Done>,
+    seeds: HashMap<(Cpu, Known), u64>,
     wrong: HashSet<(Cpu, &'static str)>,
 }
 
 impl History {
     /// Takes a slice in.
     pub fn add(&mut self, ran: &Ran) {
+        let next = self.units.len() as Known;
+        let unit = *self.units.entry(ran.unit).or_insert(next);
+        let next = self.settings.len() as Known;
+        let setting = *self.settings.entry(ran.condition.setting).or_insert(next);
         let put = |done: &mut Done| {
             done.last_ms = done.last_ms.max(ran.end_ms);
             done.busy_ns = done.busy_ns.saturating_add(ran.busy_ns);
         };
         match ran.partner {
-            Some(partner) => put(self.pairs.entry((ran.cpu, partner, ran.unit)).or_default()),
-            None => put(self.cells.entry((ran.cpu, ran.unit, ran.condition.setting)).or_default()),
+            Some(partner) => put(self.pairs.entry((ran.cpu, partner, unit)).or_default()),
+            None => put(self.cells.entry((ran.cpu, unit, setting)).or_default()),
         }
         if let Some(next) = ran.next_seed {
-            let seed = self.seeds.entry((ran.cpu, ran.unit)).or_default();
+            let seed = self.seeds.entry((ran.cpu, unit)).or_default();
             *seed = (*seed).max(next);
         }
         if ran.mismatches > 0 {
@@ -65,14 +74,26 @@ impl History {
         }
     }
 
+    /// What was done of one unit under one setting, to be asked by cpu.
+    pub fn of(&self, unit: Unit, setting: Setting) -> impl Fn(Cpu) -> Done + '_ {
+        let known = self.units.get(&unit).copied().zip(self.settings.get(&setting).copied());
+        move |cpu| known.and_then(|(u, s)| self.cells.get(&(cpu, u, s))).copied().unwrap_or_default()
+    }
+
+    /// What ordered pairs of cpus did of one unit.
+    pub fn together(&self, unit: Unit) -> impl Fn(Cpu, Cpu) -> Done + '_ {
+        let known = self.units.get(&unit).copied();
+        move |first, second| known.and_then(|u| self.pairs.get(&(first, second, u))).copied().unwrap_or_default()
+    }
+
     /// What was done of a cell.
     pub fn done(&self, cpu: Cpu, unit: Unit, setting: Setting) -> Done {
-        self.cells.get(&(cpu, unit, setting)).copied().unwrap_or_default()
+        self.of(unit, setting)(cpu)
     }
 
     /// What an ordered pair of cpus did of a unit.
     pub fn done_together(&self, first: Cpu, second: Cpu, unit: Unit) -> Done {
-        self.pairs.get(&(first, second, unit)).copied().unwrap_or_default()
+        self.together(unit)(first, second)
     }
 
     /// Whether this cpu ever gave a wrong output in this kernel.
@@ -88,6 +109,6 @@ impl History {
 
     /// Table seeds of the unit that were used on this cpu, in all windows together.
     pub fn seeds_used(&self, cpu: Cpu, unit: Unit) -> u64 {
-        self.seeds.get(&(cpu, unit)).copied().unwrap_or(0)
+        self.units.get(&unit).and_then(|u| self.seeds.get(&(cpu, *u))).copied().unwrap_or(0)
     }
 }

@@ -9,7 +9,7 @@ use rand_chacha::rand_core::Rng;
 
 use super::settings::{self, Offer};
 use super::{
-    Aim, Brief, Done, LONGEST_PHASE, LONGEST_SLICE, Phase, Planned, SHORTEST, Unit, below, groups, heated, pairs,
+    Aim, Brief, Done, LONGEST_PHASE, LONGEST_SLICE, Phase, Planned, SHORTEST, Seat, Unit, below, groups, heated, pairs,
     stream, value,
 };
 use crate::condition::Setting;
@@ -37,6 +37,8 @@ pub(super) struct Board<'a> {
     /// Record and plan so far in the plain setting, by seat and single unit: last time, seconds.
     plainly: Vec<Vec<(u64, f64)>>,
     rounds_taken: Vec<usize>,
+    /// When the pairs of each round were last all together.
+    round_ages: Vec<u64>,
 }
 
 impl<'a> Board<'a> {
@@ -71,6 +73,7 @@ impl<'a> Board<'a> {
             used,
             plainly,
             rounds_taken: Vec::new(),
+            round_ages: Vec::new(),
             brief,
         }
     }
@@ -96,14 +99,18 @@ impl<'a> Board<'a> {
         let history = self.brief.history;
         let plainly = self.plainly.iter().flatten().filter(|(last, _)| *last == 0).count();
         let mut count = plainly as u64;
-        for seat in &self.brief.site.seats {
-            for offer in &self.others {
-                let never = |&&i: &&usize| history.done(seat.cpu, self.singles[i], offer.setting).last_ms == 0;
-                count += self.defaults.iter().filter(never).count() as u64;
+        let seats = &self.brief.site.seats;
+        for offer in &self.others {
+            for &unit in &self.defaults {
+                let done = history.of(self.singles[unit], offer.setting);
+                count += seats.iter().filter(|s| done(s.cpu).last_ms == 0).count() as u64;
             }
-            for other in self.brief.site.seats.iter().filter(|o| o.cpu != seat.cpu) {
-                let never = |u: &&Unit| history.done_together(seat.cpu, other.cpu, **u).last_ms == 0;
-                count += self.together.iter().filter(never).count() as u64;
+        }
+        for &unit in &self.together {
+            let done = history.together(unit);
+            for seat in seats {
+                let never = |o: &&Seat| o.cpu != seat.cpu && done(seat.cpu, o.cpu).last_ms == 0;
+                count += seats.iter().filter(never).count() as u64;
             }
         }
         count
@@ -170,15 +177,17 @@ impl<'a> Board<'a> {
             return;
         }
         let history = self.brief.history;
-        let last = |pairs: &[(usize, usize)]| {
-            let both = pairs.iter().flat_map(|&(a, b)| [(a, b), (b, a)]);
-            both.map(|(a, b)| history.done_together(self.cpu(a), self.cpu(b), self.together[0]).last_ms).min()
-        };
+        if self.round_ages.is_empty() {
+            let done = history.together(self.together[0]);
+            let age = |r: usize| {
+                let both = pairs::round(n, r).into_iter().flat_map(|(a, b)| [(a, b), (b, a)]);
+                both.map(|(a, b)| done(self.cpu(a), self.cpu(b)).last_ms).min().unwrap_or(0)
+            };
+            self.round_ages = (0..pairs::rounds(n)).map(age).collect();
+        }
         let free: Vec<usize> = (0..pairs::rounds(n)).filter(|r| !self.rounds_taken.contains(r)).collect();
         let start = below(&mut self.rng.clone(), free.len());
-        let oldest = (0..free.len())
-            .map(|i| free[(start + i) % free.len()])
-            .min_by_key(|&r| last(&pairs::round(n, r)).unwrap_or(0));
+        let oldest = (0..free.len()).map(|i| free[(start + i) % free.len()]).min_by_key(|&r| self.round_ages[r]);
         let Some(round) = oldest else { return };
         self.rounds_taken.push(round);
         self.rng.next_u64();
@@ -283,10 +292,11 @@ impl<'a> Board<'a> {
         let mut rng = self.rng.clone();
         self.rng.next_u64();
         let mut places: Vec<(bool, u64, u64, usize, usize)> = Vec::new();
-        for (g, group) in groups.iter().enumerate() {
-            for &unit in &self.defaults {
-                let cell = self.singles[unit];
-                let last = |&seat: &usize| history.done(self.cpu(seat), cell, offer.setting).last_ms;
+        for &unit in &self.defaults {
+            let cell = self.singles[unit];
+            let done = history.of(cell, offer.setting);
+            let last = |&seat: &usize| done(self.cpu(seat)).last_ms;
+            for (g, group) in groups.iter().enumerate() {
                 let wrong =
                     history.any_wrong() && group.iter().any(|&seat| history.was_wrong(self.cpu(seat), cell.kernel));
                 places.push((wrong, group.iter().map(last).min().unwrap_or(0), rng.next_u64(), g, unit));
