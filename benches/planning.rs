@@ -4,7 +4,7 @@ use std::hint::black_box;
 use std::time::Duration;
 
 use criterion::{Criterion, criterion_group, criterion_main};
-use proofhouse::condition::{Condition, Role};
+use proofhouse::condition::Condition;
 use proofhouse::host::Cpu;
 use proofhouse::plan::{self, Brief, History, Ran, Seat, Site};
 
@@ -15,7 +15,7 @@ fn planning(criterion: &mut Criterion) {
     let budget = Duration::from_secs(600);
     let mut history = History::default();
     for (n, cell) in plan::cells(&site, &units, budget).into_iter().enumerate() {
-        let condition = Condition { setting: cell.setting, role: Role::Alone, level: None, kib: cell.unit.size.0 };
+        let condition = Condition { setting: cell.setting, paired: false, level: None, kib: cell.unit.size.0 };
         history.add(&Ran {
             cpu: cell.cpu,
             partner: cell.partner,

@@ -74,7 +74,8 @@ fi
 
 arm=aarch64-unknown-linux-gnu
 if rustc --print target-libdir --target $arm 2>/dev/null | xargs test -d &&
-    command -v aarch64-linux-gnu-gcc aarch64-linux-gnu-objdump qemu-aarch64 > /dev/null; then
+    command -v aarch64-linux-gnu-gcc > /dev/null && command -v aarch64-linux-gnu-objdump > /dev/null &&
+    command -v qemu-aarch64 > /dev/null; then
     CARGO_TARGET_AARCH64_UNKNOWN_LINUX_GNU_LINKER=aarch64-linux-gnu-gcc \
         cargo build --release --quiet -p kernels --example list_builds --target $arm
     qemu-aarch64 -L /usr/aarch64-linux-gnu "$target/$arm/release/examples/list_builds" > "$listing"

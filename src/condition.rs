@@ -1,4 +1,4 @@
-//! Under what a core works: who else is busy, how hard it works, how it came to the slice, in which role, with how much
+//! Under what a core works: who else is busy, how hard it works, how it came to the slice, alone or in a pair, with how much
 //! memory. In a record it is one line of words, e.g. `all steady 100% l1 21KiB` or `solo burst 10us/100us l2 384KiB`;
 //! what is not said there is as it was before that word existed.
 
@@ -54,8 +54,8 @@ pub enum Pace {
         /// Microseconds.
         off_us: u32,
     },
-    /// On for the first half of every period. Periods begin at multiples of their length on the system's monotonic
-    /// clock, hence on all cpus at once; dithered, each beginning is put off by a random part of the other half.
+    /// On for the first half of every period. Periods begin at the same distance from the multiples of their length on the
+    /// system's monotonic clock, hence on all cpus at once; dithered, each beginning is put off by a random part of the other half.
     Step {
         /// Microseconds.
         period_us: u32,
@@ -129,19 +129,6 @@ pub enum Before {
     Rested(u16),
 }
 
-/// Which part of a kernel for two cpus.
-#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize, Deserialize)]
-#[serde(rename_all = "snake_case")]
-pub enum Role {
-    /// The kernel takes one cpu.
-    #[default]
-    Alone,
-    /// The first.
-    First,
-    /// The second.
-    Second,
-}
-
 /// The smallest memory that holds the footprint on this host.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize, Deserialize)]
 #[serde(rename_all = "snake_case")]
@@ -199,8 +186,8 @@ impl fmt::Display for Setting {
 pub struct Condition {
     /// What a plan varies.
     pub setting: Setting,
-    /// Which part of a kernel for two cpus.
-    pub role: Role,
+    /// A kernel for two cpus; the record names the second.
+    pub paired: bool,
     /// Where the footprint lies, if that is known.
     pub level: Option<Level>,
     /// Footprint in KiB.
@@ -210,10 +197,8 @@ pub struct Condition {
 impl fmt::Display for Condition {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         write!(f, "{}", self.setting)?;
-        match self.role {
-            Role::Alone => {}
-            Role::First => f.write_str(" first-of-pair")?,
-            Role::Second => f.write_str(" second-of-pair")?,
+        if self.paired {
+            f.write_str(" in-pair")?;
         }
         if let Some(level) = self.level {
             write!(f, " {level}")?;
@@ -259,7 +244,7 @@ fn parse(text: &str) -> Option<Condition> {
     };
     let mut condition = Condition {
         setting: Setting { arrangement, pace, before: Before::Anything },
-        role: Role::Alone,
+        paired: false,
         level: None,
         kib: 0,
     };
@@ -267,8 +252,7 @@ fn parse(text: &str) -> Option<Condition> {
         match words.next()? {
             "heated" => condition.setting.before = Before::Heated(words.next()?.strip_suffix('s')?.parse().ok()?),
             "rested" => condition.setting.before = Before::Rested(words.next()?.strip_suffix("ms")?.parse().ok()?),
-            "first-of-pair" => condition.role = Role::First,
-            "second-of-pair" => condition.role = Role::Second,
+            "in-pair" => condition.paired = true,
             word => {
                 if let Some((level, _)) = Level::ALL.iter().find(|(_, w)| *w == word) {
                     condition.level = Some(*level);
@@ -299,9 +283,9 @@ mod tests {
         for (arrangement, _) in Arrangement::ALL {
             for pace in paces {
                 for before in befores {
-                    for (role, level) in [(Role::Alone, None), (Role::First, Some(Level::L3)), (Role::Second, None)] {
+                    for (paired, level) in [(false, None), (true, Some(Level::L3)), (false, Some(Level::L1))] {
                         let setting = Setting { arrangement, pace, before };
-                        let condition = Condition { setting, role, level, kib: 384 };
+                        let condition = Condition { setting, paired, level, kib: 384 };
                         assert_eq!(condition.to_string().parse(), Ok(condition), "{condition}");
                     }
                 }
@@ -312,7 +296,7 @@ mod tests {
     #[test]
     fn words_of_older_ledgers_are_understood_and_others_refused() {
         let old: Condition = "all steady 100% 21KiB".parse().unwrap();
-        assert_eq!((old.setting, old.role, old.level, old.kib), (Setting::PLAIN, Role::Alone, None, 21));
+        assert_eq!((old.setting, old.paired, old.level, old.kib), (Setting::PLAIN, false, None, 21));
         for bad in [
             "",
             "all",

@@ -10,6 +10,9 @@ use serde::{Deserialize, Serialize};
 
 use crate::host::Cpu;
 
+/// Seeds from here on are beyond every table: their cases were made for one job, live, and are never used again.
+pub const FRESH_FROM: u64 = 1 << 47;
+
 /// One line of a ledger, without the envelope.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 #[serde(tag = "kind", rename_all = "snake_case")]

@@ -173,6 +173,23 @@ def check_places():
     print(f"kernel's word: {sum(pinned.values())} looks at working threads of {len(pinned)} cpus, {moved} not where they were ordered")
 
 
+def check_memory():
+    """Each worker's mappings have the policy of its own node."""
+    right = set()
+    for line in text("memory").splitlines():
+        command, _, policies = line.partition("|")
+        cpu = int(re.search(r"--cpu (\d+)", command)[1])
+        node = re.search(r"--node=(\d+)", command)
+        expect(node and int(node[1]) == cpu // 4, f"worker for cpu {cpu} was started as {command}")
+        others = [p for p in policies.split() if p.startswith("bind:") and p != f"bind:{cpu // 4}"]
+        if f"bind:{cpu // 4}" in policies and not others:
+            right.add(cpu)
+        else:
+            expect(False, f"memory of the worker for cpu {cpu}: {policies}")
+    expect(right == CPUS, f"memory is bound to the right node for cpus {sorted(right)} alone")
+    print(f"memory: bound to their own node for {len(right)} of {len(CPUS)} workers")
+
+
 def check_leaving():
     window, bodies = document("leaving.json"), ledger("leaving")
     code = int(text("leaving.code"))
@@ -213,6 +230,7 @@ def check_leaving():
 core_of = check_survey()
 check_whole(core_of)
 check_places()
+check_memory()
 check_leaving()
 for problem in problems[:20]:
     print(f"boot-eight-cpus: {problem}", file=sys.stderr)

@@ -13,7 +13,7 @@ use super::live::Keeper;
 use super::rises::Rises;
 use super::sample::words_on;
 use crate::condition::{Arrangement, Setting};
-use crate::event::{Event, Mismatch, Purpose, Remark, Surroundings};
+use crate::event::{Confirmation, Event, Finding, Mismatch, Purpose, Remark, Surroundings};
 use crate::host::{Counters, Cpu, Host, Root, Sensors, affinity};
 use crate::judge::confirm::{Confirmer, Counters as Watch, Want};
 use crate::ledger::Journal;
@@ -150,6 +150,11 @@ impl Bench {
         Ok(())
     }
 
+    fn maker(&self, finding: &Finding) -> Option<Cpu> {
+        let kernel = kernels::catalogue::find(&finding.kernel)?.id();
+        self.live.as_ref()?.maker(&Case { kernel, seed: Seed(finding.seed?), size: Size(finding.size) })
+    }
+
     fn case_of(&self, m: &Mismatch) -> Option<Case> {
         let kernel = kernels::catalogue::find(&m.kernel)?.id();
         Some(Case { kernel, seed: Seed(m.seed?), size: Size(m.size) })
@@ -264,6 +269,16 @@ impl Director for Bench {
         }
         for finding in self.confirmer.completed(unix_ms()) {
             self.bar.println(format!("finding: {}", finding.statement));
+            if finding.confirmation == Confirmation::Refuted
+                && let Some(maker) = self.maker(&finding)
+            {
+                self.remark(format!(
+                    "the expected words of {} seed {} were computed live on cpu {maker}, and other cpus compute others: \
+                     look at cpu {maker}",
+                    finding.kernel,
+                    finding.seed.unwrap_or(0)
+                ))?;
+            }
             self.keep(&Event::Finding(Box::new(finding)))?;
         }
         if !self.bar.is_hidden() {

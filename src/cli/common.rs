@@ -79,6 +79,21 @@ pub fn units(choice: &Choice) -> Result<(Vec<Unit>, Vec<Skipped>), Error> {
     Ok((units, skipped))
 }
 
+/// Where one cpu is tested, kernels for two are set aside, and said so.
+pub fn without_pairs(units: &mut Vec<Unit>, skipped: &mut Vec<Skipped>, cpus: usize) -> Result<(), Error> {
+    if cpus > 1 {
+        return Ok(());
+    }
+    let takes_two = |u: &Unit| kernels::catalogue::find(u.kernel).is_some_and(|k| k.cpus() == 2);
+    let two = units.extract_if(.., |u| takes_two(u));
+    let why = "takes two cpus, and one is tested";
+    skipped.extend(two.map(|u| Skipped { kernel: u.kernel, variant: u.variant, why: why.to_owned() }));
+    if units.is_empty() {
+        return Err(Error::Usage(format!("--kernels: {why}; name two cpus, e.g. --cpus 0,1")));
+    }
+    Ok(())
+}
+
 /// The golden tables, pins checked.
 pub fn open_golden() -> Result<(), Error> {
     golden::table::open().map_err(|why| Error::CannotDo(why.to_string()))

@@ -38,7 +38,7 @@ struct Ready {
 struct Stock {
     ready: BTreeMap<Work, Vec<Ready>>,
     wanted: VecDeque<Work>,
-    known: HashMap<Case, Vec<u64>>,
+    known: HashMap<Case, (Cpu, Vec<u64>)>,
     slow: Vec<Work>,
 }
 
@@ -98,14 +98,19 @@ impl Live {
             if begun.elapsed() > TOO_LONG {
                 stock.slow.push(work);
             }
-            stock.known.insert(case, words.clone());
+            stock.known.insert(case, (cpu, words.clone()));
             stock.ready.entry(work).or_default().push(Ready { seed, words, core, taken: Vec::new() });
         }
     }
 
     /// The expected words of a live case of this job.
     pub fn known(&self, case: &Case) -> Option<Vec<u64>> {
-        self.stock().known.get(case).cloned()
+        self.stock().known.get(case).map(|(_, words)| words.clone())
+    }
+
+    /// The cpu that computed them.
+    pub fn maker(&self, case: &Case) -> Option<Cpu> {
+        self.stock().known.get(case).map(|(cpu, _)| *cpu)
     }
 
     fn take(&self, work: Work, cpu: Cpu) -> Option<(Seed, Vec<u64>)> {

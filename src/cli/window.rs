@@ -39,7 +39,8 @@ pub fn run(args: &WindowArgs, start: Instant) -> Result<Exit, Error> {
     common::open_golden()?;
     let host = common::host_below(&args.root)?;
     let seats = common::seats(&host, &args.choice)?;
-    let (units, skipped) = common::units(&args.choice)?;
+    let (mut units, mut skipped) = common::units(&args.choice)?;
+    common::without_pairs(&mut units, &mut skipped, seats.len())?;
     if args.max_temp.is_some() && seats.iter().all(|(cpu, _)| host.sensors.read(*cpu).celsius.is_none()) {
         return Err(Error::CannotDo(
             "--max-temp cannot be kept: no temperature of the tested cpus can be read here; see `proofhouse survey`, or leave it out"

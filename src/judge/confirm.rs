@@ -11,7 +11,7 @@ use std::time::Duration;
 
 use kernels::{Case, Seed, Size, Variant, catalogue};
 
-use crate::event::{Confirmation, Event, Finding, Job, Leg, Mismatch, NoticedBy, Purpose, Slice};
+use crate::event::{Confirmation, Event, FRESH_FROM, Finding, Job, Leg, Mismatch, NoticedBy, Purpose, Slice};
 use crate::host::Cpu;
 
 /// Lengths of the suspect's legs; a control's leg of the same length follows each. The later ones are only run while
@@ -417,6 +417,11 @@ impl Open {
             }
             Confirmation::Once => format!("{what}; not wrong again in {suspect_runs} runs, {control}"),
             Confirmation::Shared => format!("{what}; {again}, and {control}: not this core's alone"),
+            Confirmation::Refuted if self.case.seed.0 >= FRESH_FROM => format!(
+                "{what}, but the reference on cpu {} gives other words than were expected of this live case: whichever cpu computed \
+                 those is wrong, or that one",
+                refuted.first().map_or(0, |c| c.0)
+            ),
             Confirmation::Refuted => format!(
                 "{what}, but the reference on cpu {} gives other words than the golden table: the tool, its table or that cpu is wrong",
                 refuted.first().map_or(0, |c| c.0)

@@ -31,7 +31,7 @@ fn carry_out(plan: &Plan, now_ms: u64, history: &mut History, wrong: impl Fn(Cpu
                 let seconds = phase.seconds * f64::from(slice.share) / f64::from(shares.max(1));
                 let condition = Condition {
                     setting: phase.setting,
-                    role: crate::condition::Role::Alone,
+                    paired: slice.partner.is_some(),
                     level: None,
                     kib: slice.unit.size.0,
                 };

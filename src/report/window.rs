@@ -222,6 +222,10 @@ impl Gathering {
             next: rule.next,
             statement: figures.statement(),
             figures,
+            together: self.tally.cpus.get(&cpu).map_or(Together::default(), |t| Together {
+                runs: u64::try_from(t.together.runs).unwrap_or(u64::MAX),
+                mismatches: u64::try_from(t.together.mismatches).unwrap_or(u64::MAX),
+            }),
         }
     }
 }
@@ -275,6 +279,17 @@ pub struct CoreReport {
     pub figures: Figures,
     /// The bound in words.
     pub statement: String,
+    /// What it ran together with another cpu; wrong outputs there are not told apart between the two.
+    pub together: Together,
+}
+
+/// Work for two cpus.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Serialize)]
+pub struct Together {
+    /// Runs.
+    pub runs: u64,
+    /// Wrong ones.
+    pub mismatches: u64,
 }
 
 /// One kernel's variant on one cpu.
@@ -408,6 +423,10 @@ impl WindowReport {
     fn details(&self, out: &mut String) {
         for c in &self.cores {
             let _ = writeln!(out, "\ncpu {}: {}", c.cpu, c.statement);
+            if c.together.runs > 0 {
+                let Together { runs, mismatches } = c.together;
+                let _ = writeln!(out, "  together with another cpu: {mismatches} wrong in {runs} runs");
+            }
             if c.verdict != Verdict::Clear {
                 let _ = writeln!(out, "{}", folded(&format!("  because {}", c.because)));
                 let _ = writeln!(out, "{}", folded(&format!("  next: {}", c.next)));

@@ -8,7 +8,7 @@ use kernels::{Case, Seed, Work, catalogue};
 
 use super::protocol::{CaseOrder, SliceOrder, SliceReport};
 use super::spec::{Post, Span, Spec, Truth};
-use crate::condition::{Before, Condition, Role};
+use crate::condition::{Before, Condition};
 use crate::event::Surroundings;
 use crate::host::Cpu;
 
@@ -59,9 +59,9 @@ impl Flight {
             expected.push(Arc::new(words));
         }
         let work = kernel.work(spec.size);
-        let role = if spec.partner.is_some() { Role::First } else { Role::Alone };
         let level = truth.level(spec.size, cpu, spec.setting);
-        let condition = Condition { setting: spec.setting, role, level, kib: spec.size.0 }.to_string();
+        let paired = spec.partner.is_some();
+        let condition = Condition { setting: spec.setting, paired, level, kib: spec.size.0 }.to_string();
         Ok(Flight {
             slice,
             spec,

@@ -10,8 +10,13 @@ use rand_chacha::rand_core::{Rng, SeedableRng};
 
 use crate::condition::Pace;
 
-/// The last part of a pause that is spun, in nanoseconds.
+/// The last part of a pause that is spun, in nanoseconds; before a step more, so that it begins on time where waking takes
+/// long.
 const SPIN: u64 = 150_000;
+const SPIN_STEP: u64 = 400_000;
+/// Steps begin so long after the multiples of their period, in nanoseconds: the system's own tick falls on multiples of
+/// 1, 4 or 10 ms of the same clock, on every cpu.
+pub const CLEAR_OF_TICK: u64 = 300_000;
 /// Longest sleep without a look whether to go on, in nanoseconds.
 const NAP: u64 = 10_000_000;
 /// A stretch of work under a steady duty below 100 %, in nanoseconds.
@@ -82,10 +87,12 @@ impl Metronome {
             Pace::Step { period_us, dithered } => {
                 let period = (u64::from(period_us) * 1000).max(2);
                 let late = if dithered { self.rng.next_u64() % (period / 2) } else { 0 };
-                ((now / period + 1) * period + late, period / 2)
+                let clear = CLEAR_OF_TICK % (period / 2).max(1);
+                ((now.saturating_sub(clear) / period + 1) * period + clear + late, period / 2)
             }
         };
-        wait(due, until, stop)?;
+        let spin = if matches!(self.pace, Pace::Step { .. }) { SPIN_STEP } else { SPIN };
+        wait(due, until, spin, stop)?;
         self.begun = monotonic();
         if self.begun >= until && self.stretches > 0 {
             return None;
@@ -110,18 +117,18 @@ impl Metronome {
 }
 
 /// Waits until `due`; nothing if `until` comes first or `stop` says so.
-fn wait(due: u64, until: u64, stop: impl Fn() -> bool) -> Option<()> {
+fn wait(due: u64, until: u64, spin: u64, stop: impl Fn() -> bool) -> Option<()> {
     let target = due.min(until);
     loop {
         let left = target.saturating_sub(monotonic());
         if left == 0 {
             break;
         }
-        if left > 2 * SPIN {
+        if left > spin + SPIN {
             if stop() {
                 return None;
             }
-            std::thread::sleep(Duration::from_nanos((left - SPIN).min(NAP)));
+            std::thread::sleep(Duration::from_nanos((left - spin).min(NAP)));
         } else {
             std::hint::spin_loop();
         }
@@ -165,8 +172,8 @@ mod tests {
             let end = beat.next(u64::MAX, || false).unwrap();
             let began = end - 1_000_000;
             assert_eq!(began, beat.begun);
-            // how late each was is its distance from the last multiple, unless it was held up for a whole period
-            on_time += u64::from(began % 2_000_000 <= ON_TIME);
+            // how late each was is its distance from the last due time, unless it was held up for a whole period
+            on_time += u64::from((began - CLEAR_OF_TICK) % 2_000_000 <= ON_TIME);
             beat.ended();
         }
         let (steps, counted) = beat.steps().unwrap();

@@ -8,11 +8,9 @@ use kernels::{Case, Seed, Size, Variant};
 use super::fault::Fault;
 use super::protocol::{Message, Order};
 use crate::condition::{Level, Setting};
+pub use crate::event::FRESH_FROM;
 use crate::event::{Ending, Event, How, Job, Purpose, Surroundings};
 use crate::host::Cpu;
-
-/// Seeds from here on are beyond every table: their cases were made for one job and are never used again.
-pub const FRESH_FROM: u64 = 1 << 47;
 
 /// How long a slice lasts.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]

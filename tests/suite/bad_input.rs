@@ -57,6 +57,13 @@ fn cpus_kernels_variants_and_numbers() {
     window(&["--confidence", "NaN"], &["NaN"]);
     window(&["--max-temp", "5000"], &["5000", "150"]);
     window(&["--seed", "-1"], &["-1"]);
+    let one = super::running::cpus()[0].to_string();
+    window(&["--kernels", "sync.*", "--cpus", &one], &["two cpus"]);
+    window(&["--root", "/nonexistent/root"], &["/nonexistent/root"]);
+    window(&["--explain", "--root", "/etc/passwd"], &["/etc/passwd"]);
+    refused(&["ledger", "coverage", "--overdue", "30"], 2, &["30", "unit"]);
+    refused(&["ledger", "coverage", "--kernels", "none.*"], 2, &["none.*"]);
+    refused(&["drill", "--kernels", "sync.*"], 2, &["one cpu"]);
     refused(&["drill", "--faults", "0"], 2, &["0"]);
     refused(&["windows"], 2, &["windows"]);
     refused(&["window", "--budget", "2s", "--colour"], 2, &["--colour"]);
@@ -77,7 +84,7 @@ fn ledgers() {
     window(&foreign_text, &[&foreign_text, "notes.txt"]);
     // root is stopped by no permission bits, but nobody can make a folder in /proc
     window("/proc/nowhere/ledger", &["/proc/nowhere"]);
-    for command in ["show", "verify"] {
+    for command in ["show", "verify", "coverage"] {
         refused(&["ledger", command, "--ledger", &file], 3, &[&file]);
         refused(&["ledger", command, "--ledger", "/nonexistent/ledger"], 3, &["/nonexistent/ledger"]);
         refused(&["ledger", command, "--ledger", &foreign_text], 3, &[&foreign_text]);
