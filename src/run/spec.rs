@@ -188,6 +188,7 @@ pub struct FoldTask {
 
 /// What the supervisor answers with; carried out in order.
 #[derive(Debug)]
+#[expect(clippy::large_enum_variant, reason = "a few hundred bytes, moved a few times a slice")]
 pub enum Action {
     /// Start a worker on this cpu.
     Start(Cpu),
