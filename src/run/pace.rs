@@ -74,9 +74,11 @@ impl Metronome {
         Some(Duration::from_nanos(ns))
     }
 
-    /// Waits for the next stretch. Gives its end, or nothing when `until` comes first or `stop` says so.
+    /// Waits for the next stretch. Gives its end, or nothing when `until` comes first or `stop` says so. The first one of
+    /// a slice, and any without pauses, is given however late it is: a slice without a run says nothing.
     pub fn next(&mut self, until: u64, stop: impl Fn() -> bool) -> Option<u64> {
         let now = monotonic();
+        let until = if self.stretches == 0 || self.full() { u64::MAX } else { until };
         let (due, length) = match self.pace {
             Pace::FULL => (now, u64::MAX - now),
             Pace::Steady { percent } => (self.start + self.worked * 100 / u64::from(percent.max(1)), STRETCH),
@@ -94,7 +96,7 @@ impl Metronome {
         let spin = if matches!(self.pace, Pace::Step { .. }) { SPIN_STEP } else { SPIN };
         wait(due, until, spin, stop)?;
         self.begun = monotonic();
-        if self.begun >= until && self.stretches > 0 {
+        if self.begun >= until {
             return None;
         }
         self.stretches += 1;
@@ -179,6 +181,16 @@ mod tests {
         let (steps, counted) = beat.steps().unwrap();
         assert!(steps == 5 && counted <= on_time, "{counted} counted on time, {on_time} are");
         assert!(Metronome::new(Pace::FULL, 0).steps().is_none());
+    }
+
+    #[test]
+    fn the_first_stretch_and_any_at_full_pace_come_however_late() {
+        for pace in [Pace::FULL, Pace::Steady { percent: 50 }, Pace::Step { period_us: 2000, dithered: true }] {
+            let mut beat = Metronome::new(pace, 0);
+            assert!(beat.next(0, || false).is_some(), "{pace}");
+            beat.ended();
+            assert_eq!(beat.next(0, || false).is_some(), pace == Pace::FULL, "{pace}");
+        }
     }
 
     #[test]
