@@ -21,8 +21,9 @@ const RATIOS: &[(&str, Option<Variant>, f64)] = &[
     ("vector.integer", None, 0.90),
     ("fma.chain32", Some(Variant::Avx2), 0.95),
     ("fma.chain64", Some(Variant::Avx2), 0.95),
-    ("fma.matmul32", Some(Variant::Avx2), 0.90),
-    ("fma.matmul64", Some(Variant::Avx2), 0.90),
+    // against the plain instruction; what counts is scripts/ratio-blas, 0.90 of a library's matrix product
+    ("fma.matmul32", Some(Variant::Avx2), 0.85),
+    ("fma.matmul64", Some(Variant::Avx2), 0.85),
     ("cipher.aes", None, 0.90),
     ("memory.copy", None, 0.90),
     ("memory.stream", None, 0.90),
