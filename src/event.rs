@@ -144,6 +144,11 @@ pub struct Surroundings {
     pub khz: Option<u64>,
 }
 
+/// Whether a line about a counter that rose speaks of memory: then a wrong output need not be a core's doing.
+pub fn tells_of_memory(counter: &str) -> bool {
+    counter.contains("memory errors at ")
+}
+
 /// An aggregate over the runs of one slice.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 pub struct Slice {

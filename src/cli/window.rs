@@ -21,7 +21,8 @@ use crate::host::Host;
 use crate::judge::confirm::Confirmer;
 use crate::ledger::{Scope, Tally};
 use crate::plan::{self, Brief, History, Site};
-use crate::report::window::{Before, Frame, Gathering, Skipped};
+use crate::report::gathering::{Before, Frame, Gathering};
+use crate::report::window::Skipped;
 use crate::run::checker::Seat;
 use crate::run::driver::{self, unix_ms};
 use crate::run::spec::{Phase, Post, Setup, Span, Spec, Track};
@@ -86,7 +87,7 @@ pub fn run(args: &WindowArgs, start: Instant) -> Result<Exit, Error> {
         confidence: args.confidence,
         gap_ms: GAP_MS,
         cpus: seats.clone(),
-        before: past.cpus.iter().map(|(cpu, total)| (*cpu, before(total))).collect::<BTreeMap<_, _>>(),
+        before: past.cpus.keys().map(|cpu| (*cpu, Before::of(&past, *cpu))).collect::<BTreeMap<_, _>>(),
         rounds: plan.rounds(),
         left_out: plan.left_out,
         grid: explain::grid(&plan.grid),
@@ -208,13 +209,6 @@ fn open(
         })))?;
     }
     Ok(())
-}
-
-fn before(total: &crate::ledger::cells::CpuTotal) -> Before {
-    Before {
-        slices_wrong: total.all.bad.len() as u64,
-        confirmed: total.findings.iter().filter(|f| f.confirmed).count() as u64,
-    }
 }
 
 /// A planned phase as the supervisor takes it.

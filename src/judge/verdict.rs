@@ -1,4 +1,5 @@
-//! From findings, mismatches and losses to one word per core. The rules are data: one row a rule.
+//! From findings, mismatches and losses to one word per core. The rules are data: one row a rule; the rates that they
+//! are built to keep are in `design`.
 
 use std::fmt;
 
@@ -45,7 +46,7 @@ impl Verdict {
 }
 
 /// What is known about one cpu.
-#[derive(Clone, Debug, Default, PartialEq)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct Known {
     /// Runs that count.
     pub runs: u64,
@@ -53,6 +54,13 @@ pub struct Known {
     pub slices_wrong: u64,
     /// Planned slices with mismatches in earlier jobs of the same host and part.
     pub slices_wrong_before: u64,
+    /// Slices with mismatches, in this job and earlier ones, that one-off upsets do not explain: `design` says
+    /// how many.
+    pub occasions_needed: u64,
+    /// Kernels whose earlier mismatches on this cpu have not been followed by enough silence yet.
+    pub unsettled: u64,
+    /// Memory errors were counted while mismatches came or were confirmed.
+    pub memory_errors: bool,
     /// Slices of kernels for two cpus with mismatches, in which nobody else was found to be the one.
     pub together_wrong: u64,
     /// Confirmations of this job.
@@ -61,6 +69,23 @@ pub struct Known {
     pub confirmed_before: u64,
     /// Lost workers.
     pub lost: Vec<How>,
+}
+
+impl Default for Known {
+    fn default() -> Known {
+        Known {
+            runs: 0,
+            slices_wrong: 0,
+            slices_wrong_before: 0,
+            occasions_needed: 2,
+            unsettled: 0,
+            memory_errors: false,
+            together_wrong: 0,
+            confirmations: Vec::new(),
+            confirmed_before: 0,
+            lost: Vec::new(),
+        }
+    }
 }
 
 /// One rule: when it holds, the verdict is at least this.
@@ -94,21 +119,24 @@ mod libc_signal {
 /// The rules, strictest first; the README shows the same table and a test holds them equal.
 pub static RULES: &[Rule] = &[
     Rule {
-        when: "a mismatch was confirmed: wrong again on this core, never on controls, expected words recomputed elsewhere",
+        when: "a mismatch was confirmed: wrong again on this core, never on controls, expected words recomputed \
+               elsewhere, no memory error counted meanwhile",
         then: Verdict::Withdraw,
         next: "take the core out of production and keep the ledger",
-        holds: |k| k.confirmations.contains(&Confirmation::Repeated),
+        holds: |k| k.confirmations.contains(&Confirmation::Repeated) && !k.memory_errors,
     },
     Rule {
-        when: "mismatches in two or more slices of this core, and no control or recomputation speaks against it",
+        when: "mismatches in more slices of this core, in all its windows, than one-off upsets explain (two, after very \
+               long tests three or more), and no control, recomputation or memory error speaks against it",
         then: Verdict::Withdraw,
         next: "take the core out of production and keep the ledger",
         holds: |k| {
             let against = [Confirmation::Shared, Confirmation::Refuted];
             k.slices_wrong > 0
-                && k.slices_wrong + k.slices_wrong_before >= 2
+                && k.slices_wrong + k.slices_wrong_before >= k.occasions_needed.max(2)
                 && k.confirmations.iter().any(|c| *c == Confirmation::Once || *c == Confirmation::Repeated)
                 && !k.confirmations.iter().any(|c| against.contains(c))
+                && !k.memory_errors
         },
     },
     Rule {
@@ -126,8 +154,14 @@ pub static RULES: &[Rule] = &[
     Rule {
         when: "any other mismatch",
         then: Verdict::Watch,
-        next: "run longer windows on this core; a second mismatch settles it",
+        next: "run more windows on this core; what would settle it stands beside it",
         holds: |k| k.slices_wrong > 0 || k.together_wrong > 0 || !k.confirmations.is_empty(),
+    },
+    Rule {
+        when: "an earlier mismatch on this core has not been followed by enough silence in that kernel yet",
+        then: Verdict::Watch,
+        next: "run more windows on this core; what would settle it stands beside it",
+        holds: |k| k.unsettled > 0,
     },
     Rule {
         when: "a worker crashed, hung or babbled on this core",
@@ -186,7 +220,36 @@ mod tests {
             Verdict::Withdraw
         );
         assert_eq!(known(|k| k.slices_wrong_before = 1), Verdict::Clear);
+        assert_eq!(
+            known(|k| {
+                k.slices_wrong_before = 1;
+                k.unsettled = 1;
+            }),
+            Verdict::Watch
+        );
         assert_eq!(known(|k| k.confirmed_before = 1), Verdict::Withdraw);
+    }
+
+    #[test]
+    fn memory_errors_and_long_records_ask_for_more() {
+        let twice = |k: &mut Known| {
+            k.slices_wrong = 2;
+            k.confirmations = vec![Confirmation::Once];
+        };
+        assert_eq!(known(twice), Verdict::Withdraw);
+        let longer = |k: &mut Known| {
+            twice(k);
+            k.occasions_needed = 3;
+        };
+        assert_eq!(known(longer), Verdict::Watch);
+        for confirmation in [Confirmation::Once, Confirmation::Repeated] {
+            let memory = |k: &mut Known| {
+                twice(k);
+                k.confirmations = vec![confirmation];
+                k.memory_errors = true;
+            };
+            assert_eq!(known(memory), Verdict::Watch, "{confirmation:?}");
+        }
     }
 
     #[test]

@@ -17,6 +17,8 @@ use crate::ledger::episodes::{BadSlice, Episode, episodes};
 use crate::ledger::error::Error;
 use crate::ledger::record::Record;
 use crate::ledger::recover::{Reader, Summary};
+use crate::ledger::scatter::Spread;
+use crate::stats::Scatter;
 
 /// The unit that statistics speak of.
 #[derive(Clone, Debug, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize)]
@@ -54,12 +56,25 @@ pub struct Cell {
     pub first_ms: u64,
     /// Host clock at the latest end.
     pub last_ms: u64,
+    /// How mismatches lie over time.
+    #[serde(skip)]
+    spread: Spread,
 }
 
 impl Cell {
     /// The slices with mismatches, grouped.
     pub fn episodes(&self, gap_ms: u64) -> Vec<Episode> {
         episodes(&self.bad, gap_ms)
+    }
+
+    /// Wrong runs: those that workers reported, and one for each slice whose fold showed more.
+    pub fn wrong(&self) -> u128 {
+        self.mismatches + u128::from(self.fold_wrong)
+    }
+
+    /// How wrong runs lie over slices, minutes and windows, for the choice of an interval. Exposures in hours.
+    pub fn scatter(&self, gap_ms: u64) -> Scatter {
+        self.spread.scatter(self.busy_ns, &self.bad, gap_ms)
     }
 
     fn add(&mut self, slice: &Slice) {
@@ -73,7 +88,9 @@ impl Cell {
         self.mismatches += u128::from(slice.mismatches);
         self.fold_wrong += u64::from(slice.fold == FoldCheck::Wrong);
         self.fold_unchecked += u64::from(slice.fold == FoldCheck::NotChecked);
-        if slice.mismatches > 0 || slice.fold == FoldCheck::Wrong {
+        let wrong = slice.mismatches.saturating_add(u64::from(slice.fold == FoldCheck::Wrong));
+        self.spread.add(slice.job_id, slice.wall_ms, slice.busy_ns, wrong);
+        if wrong > 0 {
             let (first_ms, last_ms) = slice.mismatch_ms.unwrap_or((slice.wall_ms, end_ms));
             self.bad.push(BadSlice {
                 job_id: slice.job_id,
@@ -124,6 +141,8 @@ pub struct Cover {
     pub operations: u128,
     /// That unit.
     pub unit: String,
+    /// Processor time, in nanoseconds, up to the end of the last slice with wrong outputs; 0 where there is none.
+    pub until_wrong_ns: u128,
 }
 
 /// Whose records are wanted.
@@ -304,7 +323,11 @@ impl Tally {
             self.cpu(cpu, core).all.add(slice);
         }
         let cover = self.covers.entry(CoverKey { cpu, kernel, variant }).or_default();
+        let wrong_before = cover.all.bad.len();
         cover.all.add(slice);
+        if cover.all.bad.len() > wrong_before {
+            cover.until_wrong_ns = cover.all.busy_ns;
+        }
         cover.operations += u128::from(slice.operations);
         cover.unit.clone_from(&slice.unit);
     }

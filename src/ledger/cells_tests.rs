@@ -249,3 +249,61 @@ fn mismatches_of_a_worker_that_died_are_not_forgotten() {
     let slices: Vec<u64> = tally.without_slice().map(|m| m.slice).collect();
     assert_eq!(slices, [4, 4]);
 }
+
+/// The sums that a cell keeps against the clusters themselves.
+#[test]
+fn mismatches_are_spread_over_slices_minutes_and_windows_as_they_came() {
+    let mut tally = Tally::new(Scope::default());
+    // job, start in seconds, busy in seconds, wrong
+    let slices =
+        [(1, 0, 1, 0), (1, 30, 2, 5), (1, 61, 1, 0), (1, 119, 1, 2), (1, 130, 4, 0), (2, 9000, 1, 1), (3, 9100, 2, 0)];
+    for job in 1..=3 {
+        tally.add(&opened(job, Job::Window, "h", "p"));
+    }
+    for (number, &(job, start, busy, wrong)) in slices.iter().enumerate() {
+        let mut slice = slice(job, number as u64);
+        (slice.wall_ms, slice.busy_ns, slice.mismatches) = (start * 1000, busy * 1_000_000_000, wrong);
+        tally.add(&Event::Slice(slice));
+    }
+    let cell = &tally.cpus[&Cpu(3)].all;
+    let scatter = cell.scatter(60_000);
+    let group = |of: &dyn Fn(u64, u64) -> u64| {
+        let mut groups: Vec<(u64, u64, f64)> = Vec::new();
+        for &(job, start, busy, wrong) in &slices {
+            let hours = busy as f64 / 3600.0;
+            match groups.last_mut().filter(|(id, ..)| *id == of(job, start)) {
+                Some((_, events, exposure)) => (*events, *exposure) = (*events + wrong, *exposure + hours),
+                None => groups.push((of(job, start), wrong, hours)),
+            }
+        }
+        crate::stats::Clusters::of(&groups.iter().map(|&(_, events, hours)| (events, hours)).collect::<Vec<_>>())
+            .unwrap()
+    };
+    let near = |ours: &crate::stats::Clusters, direct: crate::stats::Clusters| {
+        assert_eq!(ours.number, direct.number);
+        assert!((ours.exposure - direct.exposure).abs() < 1e-12 && (ours.squares / direct.squares - 1.0).abs() < 1e-12);
+        assert_eq!(ours.hit.len(), direct.hit.len());
+        for (a, b) in ours.hit.iter().zip(&direct.hit) {
+            assert!(a.0 == b.0 && (a.1 - b.1).abs() < 1e-15, "{a:?} {b:?}");
+        }
+    };
+    near(&scatter.slices, group(&|_, start| start));
+    near(&scatter.minutes, group(&|_, start| start / 60));
+    near(&scatter.spells, group(&|_, start| start / 120));
+    near(&scatter.windows, group(&|job, _| job));
+    // 30 s and 119 s lie more than a minute apart; the third one is in another window
+    assert_eq!(scatter.episodes.hit.iter().map(|(n, _)| *n).collect::<Vec<_>>(), [2, 1]);
+    assert_eq!(scatter.episodes.number, 3);
+}
+
+#[test]
+fn a_fold_that_is_wrong_counts_as_a_wrong_run_of_its_own() {
+    let mut tally = Tally::new(Scope::default());
+    tally.add(&opened(1, Job::Window, "h", "p"));
+    let mut slice = slice(1, 1);
+    slice.fold = FoldCheck::Wrong;
+    tally.add(&Event::Slice(slice));
+    let cell = &tally.cpus[&Cpu(3)].all;
+    assert_eq!((cell.mismatches, cell.wrong()), (0, 1));
+    assert_eq!(cell.scatter(60_000).slices.events(), 1.0);
+}

@@ -11,7 +11,7 @@
 //! | `condition` | `clean`, `torn tail`, `broken at seq N, because` |
 //! | `journal`, `disk` | writing: chained, synced, dead after the first failure |
 //! | `intents` | what was under way when a job was cut off |
-//! | `cells`, `episodes` | counts and times for the statistics; no statistics |
+//! | `cells`, `episodes`, `scatter` | counts and times for the statistics; no statistics |
 //! | `salvage` | a new ledger from what can be read of a damaged one |
 //! | `error` | what can go wrong, with place and remedy |
 //!
@@ -32,6 +32,7 @@ pub mod record;
 pub mod recover;
 pub mod salvage;
 mod scan;
+mod scatter;
 
 pub use cells::{Cell, CellKey, Scope, Tally};
 pub use condition::{Because, Condition, Torn};

@@ -3,7 +3,9 @@
 
 pub mod coverage;
 pub mod drill;
+pub mod evidence;
 pub mod figures;
+pub mod gathering;
 pub mod ledger;
 pub mod plan;
 pub mod text;

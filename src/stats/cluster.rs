@@ -2,9 +2,10 @@
 //! A cluster is whatever may share a cause: a slice, an episode, a host.
 
 use super::interval::{Interval, StatsError, check_exposure, check_runs, ln_error};
-use super::law::{Poisson, Tail, WHOLE};
+use super::law::{CountLaw, Poisson, Tail, WHOLE};
+use super::student::student_t;
 use serde::{Deserialize, Serialize};
-use std::f64::consts::LN_2;
+use std::f64::consts::{LN_2, SQRT_2};
 
 /// A probability per run from clusters of runs.
 #[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
@@ -80,27 +81,112 @@ pub fn compare_clustered(groups: &[ClusteredShare]) -> Result<ClusteredTest, Sta
     Ok(ClusteredTest { chi_square_naive, chi_square, degrees, p_value })
 }
 
-/// Interval for the rate of events per unit of exposure from clusters `(events, exposure)`: the Garwood limits of the
-/// number of events that independent ones would have to have for the same variance. Never narrower than Garwood's.
+/// Counts by cluster, where clusters without events are only summed: that is all a rate and its scatter need of them.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub struct Clusters {
+    /// Clusters in all.
+    pub number: u64,
+    /// Exposure of all of them.
+    pub exposure: f64,
+    /// Sum of the squares of all exposures.
+    pub squares: f64,
+    /// Events and exposure of each cluster that has events.
+    pub hit: Vec<(u64, f64)>,
+}
+
+impl Clusters {
+    /// From every cluster's `(events, exposure)`.
+    ///
+    /// # Errors
+    /// An exposure that is not positive and finite.
+    pub fn of(clusters: &[(u64, f64)]) -> Result<Self, StatsError> {
+        clusters.iter().try_for_each(|&(_, exposure)| check_exposure(exposure))?;
+        let sum = |part: fn(f64) -> f64| clusters.iter().map(|&(_, t)| part(t)).sum();
+        let hit = clusters.iter().copied().filter(|(events, _)| *events > 0).collect();
+        Ok(Self { number: clusters.len() as u64, exposure: sum(|t| t), squares: sum(|t| t * t), hit })
+    }
+
+    /// Events in all clusters.
+    #[must_use]
+    pub fn events(&self) -> f64 {
+        self.hit.iter().map(|(events, _)| *events as f64).sum()
+    }
+
+    /// Variance of the number of events over what independent events would have.
+    fn design_effect(&self) -> f64 {
+        let (number, events) = (self.number as f64, self.events());
+        let rate = events / self.exposure;
+        let hit: f64 = self.hit.iter().map(|&(x, t)| (x as f64 - rate * t).powi(2) - (rate * t).powi(2)).sum();
+        number / (number - 1.0) * (hit + rate * rate * self.squares) / events
+    }
+
+    /// The probability that events which come independently at one common rate scatter over the clusters as much as
+    /// these do or more; 1 where there are too few events or clusters to scatter.
+    ///
+    /// With an event a cluster or more on average by Fisher's dispersion test; with fewer, where its χ² has no χ² law,
+    /// by the number of pairs of events in one cluster: pairs are nearly Poisson then, and any two of them exactly
+    /// uncorrelated where exposures are equal.
+    ///
+    /// Source: R. A. Fisher, Statistical Methods for Research Workers, section 16; J. B. S. Haldane, Biometrika 29
+    /// (1937) for the moments; A. D. Barbour, L. Holst & S. Janson, Poisson Approximation (1992), ch. 6, from memory.
+    #[must_use]
+    pub fn chance_of_scatter(&self) -> f64 {
+        let events = self.events();
+        if self.number < 2 || events < 2.0 {
+            return 1.0;
+        }
+        if events >= self.number as f64 {
+            // Σ (x − e)² / e with e = n t / T
+            let squares: f64 = self.hit.iter().map(|&(x, t)| (x as f64).powi(2) / t).sum();
+            let chi_square = squares * self.exposure / events - events;
+            return Poisson::chi_square_above((self.number - 1) as f64, chi_square);
+        }
+        let pairs: f64 = self.hit.iter().map(|&(x, _)| x as f64 * (x as f64 - 1.0) / 2.0).sum();
+        if pairs == 0.0 {
+            return 1.0;
+        }
+        let mean = 0.5 * events * (events - 1.0) * self.squares / (self.exposure * self.exposure);
+        Poisson { mean }.ln_tail(Tail::Upper, pairs, WHOLE).exp().min(1.0)
+    }
+
+    /// Interval for the rate of events per unit of exposure, whatever makes the counts of clusters scatter: the Garwood
+    /// limits of the number of events that independent ones would have to have for the same variance, that number made
+    /// smaller by Student's law because the variance is itself estimated. Never narrower than Garwood's.
+    ///
+    /// # Errors
+    /// Fewer than two clusters, an exposure that is not positive and finite, or a confidence outside (0, 1).
+    ///
+    /// Source: E. L. Korn & B. I. Graubard, Survey Methodology 24 (1998), carried from shares to rates; from memory.
+    pub fn rate(&self, confidence: f64) -> Result<Interval, StatsError> {
+        if self.number < 2 {
+            return Err(StatsError::TooFew { name: "clusters", given: self.number as usize, needed: 2 });
+        }
+        check_exposure(self.exposure)?;
+        let ln_side = ln_error(confidence)? - LN_2;
+        let events = self.events();
+        if events == 0.0 {
+            return super::garwood(0, self.exposure, confidence);
+        }
+        let scatter = self.design_effect();
+        let effect = if scatter <= 1.0 {
+            1.0
+        } else {
+            let normal = SQRT_2 * statrs::function::erf::erfc_inv(1.0 - confidence);
+            scatter * (student_t(confidence, (self.number - 1) as f64) / normal).powi(2)
+        };
+        let limit = |tail| Poisson::mean_where(tail, events / effect, WHOLE, ln_side) * effect / self.exposure;
+        let estimate = events / self.exposure;
+        Ok(Interval { estimate, lower: limit(Tail::Upper), upper: limit(Tail::Lower), confidence })
+    }
+}
+
+/// [`Clusters::rate`] of clusters `(events, exposure)`.
 ///
 /// # Errors
-/// Fewer than two clusters, an exposure that is not positive and finite, or a confidence outside (0, 1).
-///
-/// Source: E. L. Korn & B. I. Graubard, Survey Methodology 24 (1998), carried from shares to rates; from memory.
+/// As there.
 pub fn clustered_rate(clusters: &[(u64, f64)], confidence: f64) -> Result<Interval, StatsError> {
-    let number = clusters.len();
-    if number < 2 {
-        return Err(StatsError::TooFew { name: "clusters", given: number, needed: 2 });
+    if clusters.len() < 2 {
+        return Err(StatsError::TooFew { name: "clusters", given: clusters.len(), needed: 2 });
     }
-    clusters.iter().try_for_each(|&(_, exposure)| check_exposure(exposure))?;
-    let ln_side = ln_error(confidence)? - LN_2;
-    let (events, exposure) = clusters.iter().fold((0.0, 0.0), |(x, t), cluster| (x + cluster.0 as f64, t + cluster.1));
-    let rate = events / exposure;
-    if events == 0.0 {
-        return super::garwood(0, exposure, confidence);
-    }
-    let squares: f64 = clusters.iter().map(|&(x, t)| (x as f64 - rate * t).powi(2)).sum();
-    let design_effect = (number as f64 / (number - 1) as f64 * squares / events).max(1.0);
-    let limit = |tail| Poisson::mean_where(tail, events / design_effect, WHOLE, ln_side) * design_effect / exposure;
-    Ok(Interval { estimate: rate, lower: limit(Tail::Upper), upper: limit(Tail::Lower), confidence })
+    Clusters::of(clusters)?.rate(confidence)
 }

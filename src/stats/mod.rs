@@ -9,13 +9,15 @@
 //! | how many per hour? | [`garwood`], [`mid_p_rate`] |
 //! | what does silence prove, how long must it last? | [`upper_per_run`], [`upper_rate`], [`exposure_needed`], [`success_runs`], [`demonstration_runs`], [`mtbf`], [`fit_rate`] |
 //! | is this core worse than that one? | [`compare_rates`], [`rate_ratio`], [`fisher_exact`], [`odds_ratio`] |
-//! | do failures cluster, and what then? | [`episodes()`], [`dispersion()`], [`clustered_rate`], [`clustered_share`], [`compare_clustered`] |
+//! | do failures cluster, and what then? | [`episodes()`], [`dispersion()`], [`Clusters`], [`clustered_rate`], [`clustered_share`], [`compare_clustered`] |
+//! | which interval holds for these counts? | [`Scatter`] |
 //! | many cells with few events? | [`GammaPrior`] |
 //! | may the test stop now? | [`SequentialPlan`], [`RunLines`] |
 //! | would the test notice? | [`detection_probability`], [`exposure_to_detect`], [`comparison_power`] |
 //! | what of many tests at once? | [`holm`], [`benjamini_hochberg`] |
 
 mod binomial;
+mod choice;
 mod cluster;
 mod compare;
 mod dispersion;
@@ -29,17 +31,19 @@ mod poisson;
 mod power;
 mod sequential;
 mod shrinkage;
+mod student;
 mod zero_failure;
 
 pub use binomial::{clopper_pearson, clopper_pearson_lower, clopper_pearson_upper, exact_test, mid_p, wilson};
-pub use cluster::{ClusteredShare, ClusteredTest, clustered_rate, clustered_share, compare_clustered};
+pub use choice::{Choice, Counted, Method, Scatter, Stated};
+pub use cluster::{ClusteredShare, ClusteredTest, Clusters, clustered_rate, clustered_share, compare_clustered};
 pub use compare::{Observed, RateTest, compare_rates, rate_ratio};
 pub use dispersion::{Dispersion, dispersion, dispersion_with_exposure};
 pub use episodes::{Episode, episodes};
 pub use fisher::{FisherTest, fisher_exact, odds_ratio, odds_ratio_lower};
 pub use interval::{Interval, StatsError};
 pub use multiple::{benjamini_hochberg, bonferroni, hochberg, holm, rejections};
-pub use poisson::{garwood, garwood_lower, garwood_upper, mid_p_rate};
+pub use poisson::{garwood, garwood_lower, garwood_upper, mid_p_rate, poisson_at_least};
 pub use power::{comparison_power, detection_probability, exposure_to_detect};
 pub use sequential::{OperatingPoint, RunLines, SequentialPlan};
 pub use shrinkage::GammaPrior;

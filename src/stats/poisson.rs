@@ -1,7 +1,7 @@
 //! Events in exposure: intervals for a rate. The unit of the rate is one over the unit of the exposure.
 
 use super::interval::{Interval, StatsError, check_exposure, ln_error};
-use super::law::{HALF, Poisson, Tail, WHOLE};
+use super::law::{CountLaw, HALF, Poisson, Tail, WHOLE};
 use std::f64::consts::LN_2;
 
 /// Two-sided exact interval for the rate of events per unit of exposure.
@@ -44,6 +44,18 @@ pub fn garwood_lower(events: u64, exposure: f64, confidence: f64) -> Result<f64,
 /// Source: G. R. Cohen & S.-Y. Yang, Statistics in Medicine 13 (1994), from memory.
 pub fn mid_p_rate(events: u64, exposure: f64, confidence: f64) -> Result<Interval, StatsError> {
     two_sided(events, exposure, confidence, HALF)
+}
+
+/// The probability of `events` or more where `mean` (0 or more) are expected; 1 for none, and where the mean is no
+/// number or infinite.
+///
+/// Source: the upper tail of the Poisson law.
+#[must_use]
+pub fn poisson_at_least(events: u64, mean: f64) -> f64 {
+    if events == 0 || !mean.is_finite() {
+        return 1.0;
+    }
+    if mean <= 0.0 { 0.0 } else { Poisson { mean }.ln_tail(Tail::Upper, events as f64, WHOLE).exp().min(1.0) }
 }
 
 fn two_sided(events: u64, exposure: f64, confidence: f64, weight: f64) -> Result<Interval, StatsError> {

@@ -11,3 +11,4 @@ mod running;
 mod statistics;
 mod statistics_edges;
 mod supervisor;
+mod verdicts;
