@@ -48,12 +48,10 @@ pub fn parse_moment(text: &str) -> Result<Moment, String> {
         return Ok(Moment::Day(ms));
     }
     let remedy = "write a day such as 2025-03-01, a time such as 2025-03-01T06:30:00Z, or how long ago such as 7d";
-    match humantime::parse_duration(text) {
-        // "2025" or "0" alone has no unit
-        Ok(_) if text.chars().all(|c| c.is_ascii_digit()) => Err(format!("no unit; {remedy}")),
-        Ok(ago) => Ok(Moment::Ago(ago)),
-        Err(_) => Err(format!("no such time; {remedy}")),
+    if !text.is_empty() && text.chars().all(|c| c.is_ascii_digit()) {
+        return Err(format!("no unit; {remedy}"));
     }
+    humantime::parse_duration(text).map(Moment::Ago).map_err(|_| format!("no such time; {remedy}"))
 }
 
 /// Reads a glob of kernel ids.

@@ -59,13 +59,11 @@ pub fn lanes(places: &Places) -> Option<LaneTest> {
     }
     let corrected = holm(&tests.iter().map(|t| t.4).collect::<Vec<f64>>()).ok()?;
     let looked_at = tests.len();
-    let (place, lane, cases, of, p) =
-        tests.into_iter().zip(corrected).map(|((place, lane, cases, of, _), p)| (place, lane, cases, of, p)).min_by(
-            |a, b| {
-                let size = |t: &(&crate::ledger::places::Place, usize, u64, u64, f64)| (t.0.width, t.0.lane);
-                a.4.total_cmp(&b.4).then(b.2.cmp(&a.2)).then(size(b).cmp(&size(a)))
-            },
-        )?;
+    // Holm keeps the order and caps at 1: the uncorrected p tells apart what the corrected ones no longer do
+    let ((place, lane, cases, of, _), p) = tests
+        .into_iter()
+        .zip(corrected)
+        .min_by(|((a, .., p), _), ((b, .., q), _)| p.total_cmp(q).then((b.width, b.lane).cmp(&(a.width, a.lane))))?;
     Some(LaneTest {
         width_bits: place.width,
         lane_bits: place.lane,

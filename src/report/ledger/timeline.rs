@@ -177,9 +177,9 @@ fn one(view: &View, history: &History, cpu: Cpu, confidence: f64, figures: &dyn 
         }
         jobs.push(line);
     }
-    let pooled = |wanted: &dyn Fn(u64) -> bool| {
+    let pooled = |wanted: &BTreeSet<u64>| {
         let mut all = Cell::default();
-        clear.iter().filter(|(id, _)| wanted(*id)).for_each(|(_, cell)| all.merge(cell));
+        clear.iter().filter(|(id, _)| wanted.contains(id)).for_each(|(_, cell)| all.merge(cell));
         figures(&all)
     };
     let shown = sentences(cpu, &jobs, confidence, &pooled);
@@ -233,15 +233,10 @@ fn bound(figures: &Figures, confidence: f64) -> String {
     )
 }
 
-fn sentences(
-    cpu: Cpu,
-    jobs: &[StayLine],
-    confidence: f64,
-    pooled: &dyn Fn(&dyn Fn(u64) -> bool) -> Figures,
-) -> Vec<String> {
+fn sentences(cpu: Cpu, jobs: &[StayLine], confidence: f64, pooled: &dyn Fn(&BTreeSet<u64>) -> Figures) -> Vec<String> {
     let mut said = Vec::new();
     let ids = |jobs: &[StayLine]| jobs.iter().map(|j| j.job_id).collect::<BTreeSet<u64>>();
-    let all_of = |ids: BTreeSet<u64>| bound(&pooled(&|id| ids.contains(&id)), confidence);
+    let all_of = |ids: BTreeSet<u64>| bound(&pooled(&ids), confidence);
     let clear = |jobs: &[StayLine]| jobs.iter().filter(|j| j.clear()).count();
     let wrong = |j: &StayLine| j.wrong();
     let Some(first) = jobs.iter().position(wrong) else {
@@ -288,9 +283,9 @@ fn sentences(
     let after = &jobs[last + 1..];
     if clear(after) > 0 {
         said.push(format!(
-            "It was last wrong in {}; {} jobs after that were clear: {}. That takes nothing back.",
+            "It was last wrong in {}; {} after that clear: {}. That takes nothing back.",
             jobs[last].name(),
-            clear(after),
+            if clear(after) == 1 { "1 job was".to_owned() } else { format!("{} jobs were", clear(after)) },
             all_of(ids(after))
         ));
     }
@@ -303,7 +298,7 @@ impl CpuTimeline {
         let celsius = self.jobs.iter().any(|j| j.celsius.is_some());
         let mut headings = vec!["began", "job", "busy s", "runs", "kernels", "wrong", "per busy hour"];
         headings.extend(celsius.then_some("°C"));
-        headings.extend(["verdict", "also"]);
+        headings.push("verdict");
         let mut table = Table::new(&headings);
         for job in &self.jobs {
             let degrees = job.celsius.map_or("unknown".to_owned(), |(low, high)| format!("{low:.0} to {high:.0}"));
@@ -321,9 +316,18 @@ impl CpuTimeline {
                 job.figures.mismatches.to_string(),
                 super::columns::rate(&job.figures, false),
             ];
-            table.row(row.into_iter().chain(celsius.then_some(degrees)).chain([ending, job.also()]));
+            table.row(row.into_iter().chain(celsius.then_some(degrees)).chain([ending]));
         }
-        out.push_str(&table.text());
+        let text = table.text();
+        let mut lines = text.lines();
+        let _ = writeln!(out, "{}", lines.next().unwrap_or_default());
+        for (line, job) in lines.zip(&self.jobs) {
+            let _ = writeln!(out, "{line}");
+            let also = job.also();
+            if !also.is_empty() {
+                let _ = writeln!(out, "    also: {also}");
+            }
+        }
         for sentence in &self.shown {
             let _ = writeln!(out, "{}", folded(sentence));
         }
@@ -339,13 +343,13 @@ impl StayLine {
             (self.without_slice, "wrong without a slice"),
             (self.lost, "lost"),
             (self.findings, "findings"),
-            (self.risen, "counters rose"),
+            (self.risen, "slices with risen counters"),
             (self.void, "void"),
             (self.remarks, "remarks"),
         ]
         .into_iter()
         .filter(|(n, _)| *n > 0)
-        .map(|(n, what)| format!("{n} {what}"))
+        .map(|(n, what)| format!("{what} {n}"))
         .collect();
         also.join(", ")
     }
