@@ -186,4 +186,32 @@ mod tests {
         }
         assert!(lanes(&places).unwrap().p > SMALL);
     }
+
+    fn episode(celsius: f64) -> EpisodeOf {
+        let slice = crate::ledger::episodes::BadSlice {
+            job_id: 1,
+            slice: 1,
+            first_ms: 1,
+            last_ms: 1,
+            runs: 1,
+            busy_ns: 1,
+            mismatches: 1,
+            fold_wrong: false,
+        };
+        let first = crate::ledger::wrongs::Bad { slice, kernel: 0, setting: 0, celsius: Some(celsius) };
+        let episode = crate::ledger::Episode { first_ms: 1, last_ms: 1, mismatches: 1, slices: 1 };
+        EpisodeOf { episode, kernels: Default::default(), first }
+    }
+
+    /// Fisher's tea tasting (The Design of Experiments, 1935, II): 4 and 0 against 0 and 4 has p = 2/70 two-sided.
+    #[test]
+    fn warm_episodes_are_held_against_warm_clean_slices() {
+        let work = Work { clean_celsius: [(50, 4), (70, 0)].into(), ..Work::default() };
+        let test = heat(&work, &[71.0, 72.0, 70.0, 90.0].map(episode)).unwrap();
+        assert_eq!((test.from_celsius, test.episodes, test.of, test.clean, test.of_clean), (70, 4, 4, 0, 4));
+        assert!((test.p - 2.0 / 70.0).abs() < 1e-12, "{}", test.p);
+        assert!(heat(&work, &[]).is_none());
+        let same = Work { clean_celsius: [(50, 4)].into(), ..Work::default() };
+        assert!(heat(&same, &[episode(50.0)]).is_none(), "nothing tells warm from cool");
+    }
 }

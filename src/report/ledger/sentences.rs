@@ -114,8 +114,8 @@ fn repetition(a: &WordFigures) -> Option<String> {
     match (a.cases_failed, a.cases_failed_again) {
         (0, _) => None,
         (failed, 0) => Some(format!(
-            "No case failed in two slices ({failed} failed once): time or surroundings decide, or each case was run in one slice \
-             only."
+            "No case failed in two slices ({failed} failed in one each): time or surroundings decide, or each case was run in \
+             one slice only."
         )),
         (failed, again) => Some(format!(
             "{again} of {failed} failing cases failed in more than one slice: the operands have a part in it."
