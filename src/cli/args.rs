@@ -5,7 +5,9 @@ use std::time::Duration;
 
 use clap::{Args, Parser, Subcommand, ValueEnum};
 
+use super::when::Moment;
 use crate::host::Cpu;
+use crate::ledger::groups::Dimension;
 
 /// Said wherever work is started.
 const CAUTION: &str = "\
@@ -161,8 +163,8 @@ pub struct DrillArgs {
 /// `ledger …`.
 #[derive(Clone, Debug, Subcommand)]
 pub enum LedgerCommand {
-    /// Counts, exposure and bounds by core, kernel and variant
-    Show(LedgerArgs),
+    /// What was run and seen, with bounds: by core, kernel and so on, by episode, as a timeline, by wrong bits
+    Show(ShowArgs),
     /// Check the hash chain from end to end
     Verify(LedgerArgs),
     /// The grid of this host: what was covered when and for how long, and what is overdue
@@ -189,7 +191,7 @@ pub struct CoverageArgs {
     pub output: Output,
 }
 
-/// `ledger show`, `ledger verify`.
+/// `ledger verify`, and part of `ledger show`.
 #[derive(Clone, Debug, Args)]
 pub struct LedgerArgs {
     /// Ledger
@@ -204,6 +206,39 @@ pub struct LedgerArgs {
     /// Mismatches of one cell closer together than this are one episode
     #[arg(long, default_value = "60s", value_parser = parse_gap)]
     pub gap: Duration,
+}
+
+/// `ledger show`.
+#[derive(Clone, Debug, Args)]
+pub struct ShowArgs {
+    /// What `verify` knows too
+    #[command(flatten)]
+    pub ledger: LedgerArgs,
+    /// Show sums by cpu, core, kernel, family, condition, day or cell; may be given several times. Without it and the
+    /// options below: by cpu, and the cells with something wrong
+    #[arg(long, value_name = "WHAT", value_parser = super::when::parse_dimension)]
+    pub by: Vec<Dimension>,
+    /// Only this cpu, alone or with another one
+    #[arg(long, value_name = "N")]
+    pub cpu: Option<u32>,
+    /// Only these kernels, by glob, e.g. 'fma.*'; may be given several times
+    #[arg(long = "kernel", value_name = "GLOB", value_parser = super::when::parse_glob)]
+    pub kernels: Vec<glob::Pattern>,
+    /// Only from then on: a day or time by UTC, e.g. 2025-03-01 or 2025-03-01T06:30:00Z, or so long ago, e.g. 7d
+    #[arg(long, value_name = "WHEN", value_parser = super::when::parse_moment)]
+    pub since: Option<Moment>,
+    /// Only before then; a day counts whole
+    #[arg(long, value_name = "WHEN", value_parser = super::when::parse_moment)]
+    pub until: Option<Moment>,
+    /// List the episodes: begin, end, cpu, kernels, wrong outputs
+    #[arg(long)]
+    pub episodes: bool,
+    /// A cpu's history job by job, and when it was last shown clear; without --cpu of every cpu with more than clean slices
+    #[arg(long)]
+    pub timeline: bool,
+    /// Which bits, lanes and operands were wrong, and what that suggests
+    #[arg(long)]
+    pub words: bool,
 }
 
 /// Longest budget; longer jobs are several windows.

@@ -11,6 +11,7 @@ mod live;
 mod rises;
 mod sample;
 mod survey;
+mod when;
 mod window;
 
 use std::io::Write;

@@ -38,6 +38,9 @@ pub struct CellKey {
 pub struct Cell {
     /// Logical cpus that the slices ran on.
     pub cpus: BTreeSet<Cpu>,
+    /// The second cpus of slices that ran on two; nobody tells the two apart here.
+    #[serde(skip_serializing_if = "BTreeSet::is_empty")]
+    pub partners: BTreeSet<Cpu>,
     /// Slices.
     pub slices: u64,
     /// Runs.
@@ -77,11 +80,32 @@ impl Cell {
         self.spread.scatter(self.busy_ns, &self.bad, gap_ms)
     }
 
-    fn add(&mut self, slice: &Slice) {
+    /// Takes all of another cell in, as if its slices had been added here.
+    pub fn merge(&mut self, other: &Cell) {
+        if other.slices == 0 {
+            return;
+        }
+        self.first_ms = if self.slices == 0 { other.first_ms } else { self.first_ms.min(other.first_ms) };
+        self.last_ms = self.last_ms.max(other.last_ms);
+        self.cpus.extend(&other.cpus);
+        self.partners.extend(&other.partners);
+        self.slices += other.slices;
+        self.runs += other.runs;
+        self.busy_ns += other.busy_ns;
+        self.mismatches += other.mismatches;
+        self.fold_wrong += other.fold_wrong;
+        self.fold_unchecked += other.fold_unchecked;
+        self.bad.extend(&other.bad);
+        self.spread.merge(&other.spread);
+    }
+
+    /// Takes a slice that counts.
+    pub(super) fn add(&mut self, slice: &Slice) {
         let end_ms = slice.wall_ms.saturating_add(slice.span_ns / 1_000_000);
         self.first_ms = if self.slices == 0 { slice.wall_ms } else { self.first_ms.min(slice.wall_ms) };
         self.last_ms = self.last_ms.max(end_ms);
         self.cpus.insert(slice.cpu);
+        self.partners.extend(slice.partner.map(|p| p.cpu));
         self.slices += 1;
         self.runs += u128::from(slice.runs);
         self.busy_ns += u128::from(slice.busy_ns);
@@ -91,17 +115,7 @@ impl Cell {
         let wrong = slice.mismatches.saturating_add(u64::from(slice.fold == FoldCheck::Wrong));
         self.spread.add(slice.job_id, slice.wall_ms, slice.busy_ns, wrong);
         if wrong > 0 {
-            let (first_ms, last_ms) = slice.mismatch_ms.unwrap_or((slice.wall_ms, end_ms));
-            self.bad.push(BadSlice {
-                job_id: slice.job_id,
-                slice: slice.slice,
-                first_ms,
-                last_ms,
-                runs: slice.runs,
-                busy_ns: slice.busy_ns,
-                mismatches: slice.mismatches,
-                fold_wrong: slice.fold == FoldCheck::Wrong,
-            });
+            self.bad.push(BadSlice::of(slice));
         }
     }
 }
@@ -231,11 +245,7 @@ impl Tally {
         match event {
             Event::Opened(opened) => self.open(opened),
             Event::Slice(slice) => {
-                if slice.mismatches > 0 || slice.fold == FoldCheck::Wrong {
-                    let key = (slice.job_id, slice.slice, slice.cpu);
-                    self.waiting.remove(&key);
-                    self.told.insert(key);
-                }
+                self.pass_over(slice);
                 if self.counts(slice.job_id, slice.job) {
                     self.slice(slice);
                 }
@@ -260,6 +270,20 @@ impl Tally {
             }
             Event::Intent(_) | Event::Remark(_) | Event::Closed(_) => {}
         }
+    }
+
+    /// Takes note of a slice that is not wanted in the sums: its mismatches have their slice on record all the same.
+    pub fn pass_over(&mut self, slice: &Slice) {
+        if slice.mismatches > 0 || slice.fold == FoldCheck::Wrong {
+            let key = (slice.job_id, slice.slice, slice.cpu);
+            self.waiting.remove(&key);
+            self.told.insert(key);
+        }
+    }
+
+    /// Whether records of this job count; the opening has to come first.
+    pub fn in_scope(&self, job_id: u64, job: Job) -> bool {
+        job == Job::Window && self.standing.get(&job_id) == Some(&Standing::Counts)
     }
 
     /// Mismatches whose slice never came on record, because its worker or the machine was lost. They are evidence

@@ -3,6 +3,8 @@
 
 use serde::Serialize;
 
+use crate::event::{FoldCheck, Slice};
+
 /// Gap that ends an episode unless the caller says otherwise, in milliseconds.
 pub const GAP_MS: u64 = 60_000;
 
@@ -25,6 +27,24 @@ pub struct BadSlice {
     pub mismatches: u64,
     /// The fold showed wrong outputs beyond these.
     pub fold_wrong: bool,
+}
+
+impl BadSlice {
+    /// Of a slice with mismatches or with a wrong fold.
+    pub fn of(slice: &Slice) -> BadSlice {
+        let end_ms = slice.wall_ms.saturating_add(slice.span_ns / 1_000_000);
+        let (first_ms, last_ms) = slice.mismatch_ms.unwrap_or((slice.wall_ms, end_ms));
+        BadSlice {
+            job_id: slice.job_id,
+            slice: slice.slice,
+            first_ms,
+            last_ms,
+            runs: slice.runs,
+            busy_ns: slice.busy_ns,
+            mismatches: slice.mismatches,
+            fold_wrong: slice.fold == FoldCheck::Wrong,
+        }
+    }
 }
 
 /// Mismatches with no longer gap between them than the one asked for.

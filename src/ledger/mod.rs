@@ -12,6 +12,8 @@
 //! | `journal`, `disk` | writing: chained, synced, dead after the first failure |
 //! | `intents` | what was under way when a job was cut off |
 //! | `cells`, `episodes`, `scatter` | counts and times for the statistics; no statistics |
+//! | `view`, `filter` | one pass over a ledger for everything that is to be shown of it |
+//! | `groups`, `wrongs`, `history`, `words`, `places` | what `view` gathers: sums by core, kernel …; wrong slices; timeline; wrong words |
 //! | `salvage` | a new ledger from what can be read of a damaged one |
 //! | `error` | what can go wrong, with place and remedy |
 //!
@@ -24,15 +26,22 @@ pub mod digest;
 mod disk;
 pub mod episodes;
 pub mod error;
+pub mod filter;
 mod folder;
+pub mod groups;
+pub mod history;
 pub mod intents;
 pub mod journal;
 pub mod names;
+pub mod places;
 pub mod record;
 pub mod recover;
 pub mod salvage;
 mod scan;
 mod scatter;
+pub mod view;
+pub mod words;
+pub mod wrongs;
 
 pub use cells::{Cell, CellKey, Scope, Tally};
 pub use condition::{Because, Condition, Torn};
@@ -45,3 +54,4 @@ pub use journal::{Journal, Opening, must_sync};
 pub use record::Record;
 pub use recover::{Entry, Head, Reader, Summary, verify};
 pub use salvage::{Salvage, salvage};
+pub use view::View;

@@ -46,6 +46,16 @@ impl Groups {
         }
     }
 
+    /// Groups of another cell stay groups of their own, also where they lie at the same time.
+    fn merge(&mut self, other: &Groups) {
+        let mut other = other.clone();
+        other.close();
+        self.close();
+        self.number += other.number;
+        self.squares = self.squares.saturating_add(other.squares);
+        self.hit.extend(other.hit);
+    }
+
     fn clusters(&self, busy_ns: u128) -> Clusters {
         let mut all = self.clone();
         all.close();
@@ -77,6 +87,14 @@ impl Spread {
         self.minutes.add(start_ms / MINUTE_MS, busy_ns, wrong);
         self.spells.add(start_ms / SPELL_MS, busy_ns, wrong);
         self.windows.add(job_id, busy_ns, wrong);
+    }
+
+    /// Takes all of another cell in.
+    pub(super) fn merge(&mut self, other: &Spread) {
+        self.slices.merge(&other.slices);
+        self.minutes.merge(&other.minutes);
+        self.spells.merge(&other.spells);
+        self.windows.merge(&other.windows);
     }
 
     /// As the statistics take it; exposures in hours. `bad` are the slices with mismatches, grouped into episodes by

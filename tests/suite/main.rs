@@ -5,6 +5,7 @@ mod confirming;
 mod host;
 mod house;
 mod ledger;
+mod ledger_show;
 mod outside;
 mod pacing;
 mod running;
