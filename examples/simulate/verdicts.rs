@@ -14,8 +14,8 @@ use proofhouse::judge::design::{DESIGN, Exposure};
 use proofhouse::judge::verdict::{Known, Verdict, decide};
 use proofhouse::ledger::{Scope, Tally};
 use proofhouse::plan::{self, Brief, History, Ran, Seat, Site, Unit};
-use proofhouse::report::gathering::{Before, Frame, Gathering};
-use proofhouse::report::window::GridReport;
+use proofhouse::report::gathering::{Before, Frame, Gathering, GridReport};
+
 use rand_chacha::ChaCha8Rng;
 use rand_distr::{Distribution, Exp1, Geometric, Poisson, StandardUniform, Uniform};
 use rayon::prelude::*;

@@ -9,8 +9,8 @@ use crate::error::Error;
 use crate::exit_code::Exit;
 use crate::host::Host;
 use crate::plan::{self, Brief, Grid, Plan, Site, Unit};
+use crate::report::gathering::GridReport;
 use crate::report::plan::{PhaseReport, PlanReport, SliceReport, TrackReport};
-use crate::report::window::GridReport;
 use crate::run::driver::unix_ms;
 
 /// Plans and prints.

@@ -12,8 +12,9 @@ use crate::error::Error;
 use crate::exit_code::Exit;
 use crate::host::{Host, HostSurvey, Root};
 use crate::plan::Unit;
+use crate::report::gathering::Skipped;
 use crate::report::text::{Table, printable};
-use crate::report::window::{Skipped, VIRTUAL};
+use crate::report::window::VIRTUAL;
 
 /// The document `proofhouse/survey/1`.
 #[derive(Serialize)]

@@ -2,12 +2,10 @@
 
 use std::collections::{BTreeMap, BTreeSet};
 
-use super::figures::Figures;
-use super::window::{
-    ConditionReport, CoreReport, GridReport, KernelReport, LostReport, SCHEMA, Skipped, Together, Weakest, WindowReport,
-};
+use serde::Serialize;
+
 use crate::condition::Condition;
-use crate::event::{Ending, Event, Finding, Lost, Opened, Purpose, tells_of_memory};
+use crate::event::{Event, Finding, Lost, Opened, Purpose, tells_of_memory};
 use crate::host::Cpu;
 use crate::judge::verdict::{self, Verdict};
 use crate::ledger::cells::CpuTotal;
@@ -77,6 +75,28 @@ pub(super) fn wrong_in(tally: &Tally, cpu: Cpu) -> Vec<WrongIn> {
     .collect()
 }
 
+/// Everything that there is to cover on this host.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Serialize)]
+pub struct GridReport {
+    /// Cpu × kernel × variant × condition.
+    pub cells: u64,
+    /// Never covered before this window.
+    pub uncovered_before: u64,
+    /// Windows like this one that cover all of it; absent where they are too short for it.
+    pub windows: Option<u64>,
+}
+
+/// A variant that cannot run here.
+#[derive(Clone, Debug, PartialEq, Eq, Serialize)]
+pub struct Skipped {
+    /// Kernel id.
+    pub kernel: String,
+    /// Variant name.
+    pub variant: String,
+    /// Why.
+    pub why: String,
+}
+
 /// What the report is told beside the events.
 #[derive(Clone, Debug)]
 pub struct Frame {
@@ -104,15 +124,15 @@ pub struct Frame {
 pub struct Gathering {
     pub(super) opened: Opened,
     pub(super) tally: Tally,
-    busy_ns: u128,
+    pub(super) busy_ns: u128,
     pub(super) findings: Vec<Finding>,
     pub(super) lost: Vec<Lost>,
-    remarks: Vec<String>,
+    pub(super) remarks: Vec<String>,
     /// Pairs of cpus in each slice that went wrong for two.
     pub(super) pairs_wrong: Vec<(Cpu, Cpu)>,
     /// Cpus whose mismatches came while memory errors were counted.
     pub(super) memory: BTreeSet<Cpu>,
-    conditions: BTreeMap<String, u128>,
+    pub(super) conditions: BTreeMap<String, u128>,
 }
 
 impl Gathering {
@@ -180,102 +200,5 @@ impl Gathering {
     /// The verdict on the host so far.
     pub fn verdict(&self, frame: &Frame) -> Verdict {
         verdict::worst(frame.cpus.iter().map(|(cpu, _)| verdict::decide(&self.known(*cpu, frame)).then))
-    }
-
-    /// The document.
-    pub fn report(&self, frame: &Frame, wall_s: f64, ending: Ending) -> WindowReport {
-        let cores: Vec<CoreReport> = frame.cpus.iter().map(|&(cpu, core)| self.core(cpu, core, frame)).collect();
-        let kernels = self.tally.covers.iter().map(|(key, cover)| KernelReport {
-            kernel: key.kernel.clone(),
-            variant: key.variant.clone(),
-            cpu: key.cpu,
-            runs: u64::try_from(cover.all.runs).unwrap_or(u64::MAX),
-            busy_s: cover.all.busy_ns as f64 / 1e9,
-            operations: u64::try_from(cover.operations).unwrap_or(u64::MAX),
-            unit: cover.unit.clone(),
-            per_second: if cover.all.busy_ns == 0 {
-                0.0
-            } else {
-                cover.operations as f64 * 1e9 / cover.all.busy_ns as f64
-            },
-        });
-        WindowReport {
-            schema: SCHEMA,
-            verdict: verdict::worst(cores.iter().map(|c| c.verdict)),
-            job_id: self.opened.job_id,
-            seed: self.opened.seed,
-            host: self.opened.host.clone(),
-            part: self.opened.part.clone(),
-            virtualised: self.opened.virtualised,
-            program: self.opened.program.clone(),
-            golden: self.opened.golden.clone(),
-            ledger: frame.ledger.clone(),
-            ending,
-            budget_s: self.opened.budget_s,
-            wall_s,
-            kernel_share: self.busy_ns as f64 / 1e9 / (wall_s * frame.cpus.len().max(1) as f64),
-            rounds: frame.rounds,
-            left_out: frame.left_out,
-            grid: frame.grid,
-            conditions: self
-                .conditions
-                .iter()
-                .map(|(condition, busy)| ConditionReport { condition: condition.clone(), busy_s: *busy as f64 / 1e9 })
-                .collect(),
-            cores,
-            kernels: kernels.collect(),
-            skipped: frame.skipped.clone(),
-            findings: self.findings.clone(),
-            lost: self
-                .lost
-                .iter()
-                .map(|l| LostReport {
-                    cpu: l.cpu,
-                    core: l.core,
-                    kernel: l.kernel.clone(),
-                    variant: l.variant.clone(),
-                    condition: l.condition.clone(),
-                    how: l.how.to_string(),
-                    partner: l.partner,
-                })
-                .collect(),
-            remarks: self.remarks.clone(),
-        }
-    }
-
-    fn core(&self, cpu: Cpu, core: u32, frame: &Frame) -> CoreReport {
-        let known = self.known(cpu, frame);
-        let rule = verdict::decide(&known);
-        let empty = crate::ledger::Cell::default();
-        let all = self.tally.cpus.get(&cpu).map_or(&empty, |t| &t.all);
-        let figures = Figures::of(all, frame.confidence, frame.gap_ms);
-        let suspect = matches!(rule.then, Verdict::Watch | Verdict::Withdraw);
-        CoreReport {
-            cpu,
-            core,
-            verdict: rule.then,
-            because: rule.when,
-            next: rule.next,
-            statement: figures.statement(),
-            figures,
-            weakest: self.weakest(cpu, frame),
-            together: self.tally.cpus.get(&cpu).map_or(Together::default(), |t| Together {
-                runs: u64::try_from(t.together.runs).unwrap_or(u64::MAX),
-                mismatches: u64::try_from(t.together.wrong()).unwrap_or(u64::MAX),
-            }),
-            evidence: if suspect { self.evidence(cpu, &known, frame) } else { Vec::new() },
-            settle: if rule.then == Verdict::Watch { self.settle(cpu, frame) } else { Vec::new() },
-        }
-    }
-
-    /// The kernel's variant that was run least on this cpu, and the bound that its silence gives.
-    fn weakest(&self, cpu: Cpu, frame: &Frame) -> Option<Weakest> {
-        let silent = self.tally.covers.iter().filter(|(key, cover)| key.cpu == cpu && cover.all.wrong() == 0);
-        let (key, cover) = silent.min_by_key(|(_, cover)| cover.all.busy_ns)?;
-        Some(Weakest {
-            kernel: key.kernel.clone(),
-            variant: key.variant.clone(),
-            per_hour: super::figures::silent(cover.all.busy_ns, frame.confidence)?,
-        })
     }
 }

@@ -5,8 +5,8 @@ use std::fmt::Write;
 
 use serde::Serialize;
 
+use super::gathering::GridReport;
 use super::text::{Table, folded, printable};
-use super::window::GridReport;
 use crate::host::Cpu;
 
 /// Schema of the document.

@@ -6,8 +6,8 @@ use proofhouse::event::{
 use proofhouse::host::Cpu;
 use proofhouse::judge::verdict::Verdict;
 use proofhouse::ledger::{Scope, Tally};
-use proofhouse::report::gathering::{Before, Frame, Gathering};
-use proofhouse::report::window::{GridReport, WindowReport};
+use proofhouse::report::gathering::{Before, Frame, Gathering, GridReport};
+use proofhouse::report::window::WindowReport;
 
 const KERNEL: &str = "fma.chain64";
 const SUSPECT: Cpu = Cpu(1);
