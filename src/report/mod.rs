@@ -6,5 +6,6 @@ pub mod drill;
 pub mod figures;
 pub mod ledger;
 pub mod plan;
+pub mod reckon;
 pub mod text;
 pub mod window;
