@@ -7,6 +7,8 @@ mod house;
 mod ledger;
 mod outside;
 mod pacing;
+mod reckon;
+mod reckon_refusals;
 mod running;
 mod statistics;
 mod statistics_edges;

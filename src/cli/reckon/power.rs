@@ -13,6 +13,12 @@ use crate::report::reckon::{Exposure, Rate};
 /// Expected events of a comparison up to which its power is summed.
 const MOST_EVENTS: f64 = 1e6;
 
+/// First rate over second, level, power and split up to which lengths are worked out at once.
+const CLOSEST: f64 = 1.1;
+const LEAST_LEVEL: f64 = 1e-4;
+const MOST_POWER: f64 = 0.9999;
+const SPLITS: std::ops::RangeInclusive<f64> = 0.1..=100.0;
+
 /// `reckon power`.
 #[derive(Clone, Debug, Args)]
 #[command(before_help = NOTATION)]
@@ -113,17 +119,27 @@ fn tell_apart(args: &PowerArgs, first: Rate) -> Result<Exit, Error> {
     if first <= second {
         return Err(Error::Usage("--first: not above --second; give the higher rate as --first".to_owned()));
     }
-    let (level, split) = (args.level.unwrap_or(0.05), args.split.unwrap_or(1.0));
+    let (level, split, power) = (args.level.unwrap_or(0.05), args.split.unwrap_or(1.0), args.power.unwrap_or(0.9));
+    let refuse = |why: String| Err(Error::Usage(why));
+    if level < LEAST_LEVEL {
+        return refuse("--level: below 0.01 %, the least that is worked out; give a higher risk".to_owned());
+    }
+    if !SPLITS.contains(&split) {
+        return refuse("--split: not from 0.1 to 100; give hours of the second for one of the first".to_owned());
+    }
+    if args.hours.is_none() && first < CLOSEST * second {
+        return refuse(format!("--first: less than {CLOSEST} times --second, too close; give rates further apart"));
+    }
+    if power > MOST_POWER {
+        return refuse("--power: above 99.99 %, the most that is worked out; give less".to_owned());
+    }
     let options = "--first, --second";
     match args.hours {
         Some(hours) if (first + second * split) * hours > MOST_EVENTS => {
             Err(Error::Usage(format!("--hours: more than {MOST_EVENTS} events would come; give fewer hours")))
         }
         Some(hours) => tell(&args.output, options, power::noticing(Noticing { first, second, hours, split, level })),
-        None => {
-            let power = args.power.unwrap_or(0.9);
-            tell(&args.output, options, power::apart(Apart { first, second, split, level, power }))
-        }
+        None => tell(&args.output, options, power::apart(Apart { first, second, split, level, power })),
     }
 }
 

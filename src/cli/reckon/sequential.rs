@@ -11,7 +11,7 @@ use crate::report::reckon::Rate;
 use crate::report::reckon::sequential::{Inputs, Kind, RunInputs, per_run, reckon};
 
 /// Rates closer together than this take plans of hundreds of events.
-const CLOSEST: f64 = 1.25;
+const CLOSEST: f64 = 1.3;
 /// Risks below this make plans that nobody can wait for.
 const LEAST_RISK: f64 = 1e-4;
 /// Events of a plan that is given.

@@ -10,7 +10,7 @@ use crate::exit_code::Exit;
 use crate::report::reckon::spread::{self, Counts, Times};
 
 /// Counts that are taken at once: the likelihood of all is summed some thousand times.
-const MOST_COUNTS: usize = 1_000;
+const MOST_COUNTS: usize = 800;
 /// Times that are taken at once.
 const MOST_TIMES: usize = 100_000;
 

@@ -94,14 +94,15 @@ fn statement(inputs: &Inputs, interval: &Interval, nothing: bool, p: f64) -> Str
     if nothing {
         return format!("{seen}: without any event the ratio may be anything ({level}).");
     }
-    let held = if interval.lower > *ratio {
-        "the first rate is higher"
-    } else if interval.upper < *ratio {
-        "the first rate is lower"
-    } else {
-        "the two cannot be told apart"
+    let equal = *ratio == 1.0;
+    let held = match (interval.lower > *ratio, interval.upper < *ratio) {
+        (true, _) if equal => "the first rate is higher".to_owned(),
+        (_, true) if equal => "the first rate is lower".to_owned(),
+        _ if equal => "equal rates are not ruled out".to_owned(),
+        (true, _) => format!("the ratio is above {}", short(*ratio)),
+        (_, true) => format!("the ratio is below {}", short(*ratio)),
+        _ => format!("a ratio of {} is not ruled out", short(*ratio)),
     };
-    let held = if *ratio == 1.0 { held.to_owned() } else { format!("against a ratio of {}, {held}", short(*ratio)) };
     let times = if interval.estimate.is_finite() {
         format!("the first rate is {} times the second, {}", short(interval.estimate), range(interval))
     } else {
@@ -134,7 +135,8 @@ fn figures(inputs: &Inputs, answer: &Answer) -> String {
         }
     }
     if let Some(why) = answer.fisher_left_out {
-        out.push_str(&prose(&format!("\nFisher's exact test is left out: {why}")));
+        out.push('\n');
+        out.push_str(&prose(&format!("Fisher's exact test is left out: {why}")));
     }
     out
 }

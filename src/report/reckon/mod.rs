@@ -86,10 +86,10 @@ impl Rate {
         }
     }
 
-    /// As people say it: "a rate below one in 500 hours".
+    /// As people say it: "a rate below 1 in 500 hours".
     pub fn words(self) -> String {
         match self {
-            Rate::PerHour(rate) if rate < 1.0 => format!("one in {} hours", short(1.0 / rate)),
+            Rate::PerHour(rate) if rate < 1.0 => format!("1 in {} hours", short(1.0 / rate)),
             Rate::PerHour(rate) => format!("{} per hour", short(rate)),
             Rate::PerRun(rate) => format!("{} per run", short(rate)),
         }

@@ -89,15 +89,16 @@ struct Point {
 pub fn reckon(inputs: Inputs) -> Result<Reckoned<Inputs, Plan>, StatsError> {
     let Inputs { good, bad, alpha, beta, kind } = inputs;
     let plan = match kind {
-        Kind::Sequential => SequentialPlan::with_risks(good, bad, alpha, beta)?,
-        Kind::Fixed => SequentialPlan::fixed_with_risks(good, bad, alpha, beta)?,
         Kind::Given { hours, reject_at } => {
             SequentialPlan::fixed(hours, usize::try_from(reject_at).unwrap_or(usize::MAX))?
         }
+        Kind::Sequential | Kind::Fixed => SequentialPlan::fixed_with_risks(good, bad, alpha, beta)?,
     };
-    let fixed_hours = match kind {
-        Kind::Sequential => Some(SequentialPlan::fixed_with_risks(good, bad, alpha, beta)?.longest()),
-        _ => None,
+    let fixed_hours = (kind == Kind::Sequential).then(|| plan.longest());
+    // where the first event rejects there is nothing to stop earlier for
+    let plan = match kind {
+        Kind::Sequential if plan.accept_at.len() > 1 => SequentialPlan::with_risks(good, bad, alpha, beta)?,
+        _ => plan,
     };
     let apart = bad / good;
     let rates = [
@@ -141,12 +142,12 @@ fn statement(inputs: &Inputs, plan: &Plan, expected: f64) -> String {
     let (good, bad) = (Rate::PerHour(inputs.good).words(), Rate::PerHour(inputs.bad).words());
     let what = match inputs.kind {
         Kind::Sequential => format!(
-            "Accept after {} without an event; the test takes {} at most, and {} on average where the rate is good \
-             (a test of fixed length takes {})",
+            "Accept after {} without an event; the test takes {} at most, and {} on average where the rate is good, where a \
+             test of fixed length takes {}",
             hours_at_least(plan.shortest_accept_hours),
             hours_at_least(plan.longest_hours),
             hours(expected),
-            Exposure::Hours(plan.fixed_hours.unwrap_or_default()).words()
+            hours_at_least(plan.fixed_hours.unwrap_or_default())
         ),
         Kind::Fixed | Kind::Given { .. } => format!(
             "Test for {}; accept with {} at most, reject at event number {most}",

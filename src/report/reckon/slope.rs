@@ -2,7 +2,7 @@
 
 use serde::Serialize;
 
-use super::{Method, Reckoned, counted, range};
+use super::{Method, Reckoned, counted, limit, range};
 use crate::report::figures::{percent, short};
 use crate::report::text::Table;
 use crate::stats::{self, Interval, JackknifeRatio, LogLinear, Reading, StatsError};
@@ -76,7 +76,7 @@ pub fn slope(inputs: Readings) -> Result<Reckoned<Readings, Slope>, StatsError> 
         "{} in {}: ten degrees more make the rate {} times as high, {} ({level}); {held}.",
         counted(line.events, "event"),
         counted(line.readings as u64, "reading"),
-        short(factor.estimate),
+        limit(factor.estimate),
         range(factor)
     );
     let mut table = Table::new(&["at °C", "events", "hours", "seen per hour", "line per hour", "from", "to"]);
@@ -85,12 +85,12 @@ pub fn slope(inputs: Readings) -> Result<Reckoned<Readings, Slope>, StatsError> 
     for r in &sorted {
         let fit = line.rate_at(r.celsius)?;
         let seen = r.events as f64 / r.hours;
-        let numbers = [seen, fit.estimate, fit.lower, fit.upper].map(short);
+        let numbers = [seen, fit.estimate, fit.lower, fit.upper].map(limit);
         table.row([r.celsius.to_string(), r.events.to_string(), short(r.hours)].into_iter().chain(numbers));
     }
     let mut figures = table.text();
     if let (Some(at), Some(rate)) = (inputs.at, &wanted) {
-        figures.push_str(&format!("\nAt {at} °C: {} per hour, {} ({level})\n", short(rate.estimate), range(rate)));
+        figures.push_str(&format!("\nAt {at} °C: {} per hour, {} ({level})\n", limit(rate.estimate), range(rate)));
     }
     figures.push_str(&format!("\nScatter about the line: {} times what chance makes", short(line.dispersion)));
     figures.push_str(if line.widened { "; the limits are widened by it\n" } else { "\n" });

@@ -77,11 +77,10 @@ pub fn spread(inputs: Counts) -> Result<Reckoned<Counts, Spread>, StatsError> {
     };
     let answer = Spread { interval, holds, poisson, negative_binomial, cluster_robust, dispersion };
     let seen = format!("{} in {}", counted(events, "event"), counted(inputs.counts.len() as u64, "count"));
-    let scatter =
-        format!("variance {} times what chance alone makes, p {}", short(dispersion.index), short(dispersion.p_upper));
+    let scatter = format!("variance {} times that of chance, p {}", short(dispersion.index), short(dispersion.p_upper));
     let verdict = match holds {
         Law::Poisson => {
-            format!("no more scatter than chance alone may make ({scatter}), so the Poisson interval holds")
+            format!("no more scatter than chance may make ({scatter}), so the Poisson interval holds")
         }
         Law::NegativeBinomial => format!("events cluster ({scatter}), so the negative binomial interval holds"),
         Law::ClusterRobust => format!("events cluster ({scatter}), so the cluster-robust interval holds"),
@@ -107,8 +106,9 @@ fn figures(answer: &Spread, unit: &str) -> String {
     }
     let mut out = table.text();
     if answer.holds == Law::Poisson && answer.dispersion.mean < 1.0 {
+        out.push('\n');
         out.push_str(&prose(
-            "\nWith fewer than one event a count on average the test sees only gross clustering; it is no proof of none.",
+            "With fewer than one event a count on average the test sees only gross clustering; it is no proof of none.",
         ));
     }
     out

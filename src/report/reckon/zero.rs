@@ -79,7 +79,7 @@ pub fn proved(inputs: Proved) -> Result<Reckoned<Proved, Bound>, StatsError> {
                 fit_at_most: None,
             };
             let statement = format!(
-                "{} in {}: a probability below {} per run ({level}), less than one in {} runs.",
+                "{} in {}: a probability below {} per run ({level}), less than 1 in {} runs.",
                 counted(failures, "failure"),
                 exposure.words(),
                 short(upper),
