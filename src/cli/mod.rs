@@ -7,6 +7,7 @@ mod coverage;
 mod drill;
 mod explain;
 mod ledger;
+mod lists;
 mod live;
 mod quantity;
 mod reckon;

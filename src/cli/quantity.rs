@@ -1,4 +1,4 @@
-//! Quantities as people write them: counts, times, rates, confidences, and lists of any of them.
+//! Quantities as people write them: counts, times, rates, confidences. Lists of them are read by `lists`.
 //!
 //! | written | read as |
 //! |---|---|
@@ -8,14 +8,10 @@
 //! | `1e-9`, `1/1000000` | a probability per run |
 //! | `5/100h`, `5/1000000` | events in hours, events in runs |
 //! | `95%`, `0.95` | a share above 0 and below 1 |
-//! | `1,2,3`, `@FILE`, `-` | a list, here, in a file, on standard input; `#` begins a comment |
 //!
 //! A parser of one quantity answers with a fragment that says what is wrong and what to write; the caller names the
 //! option.
 
-use std::io::Read;
-
-use crate::error::Error;
 use crate::report::reckon::{Exposure, Observation, Rate};
 
 /// Counts up to here are exact in a double.
@@ -24,8 +20,6 @@ const MOST_COUNT: f64 = 9_007_199_254_740_992.0;
 const HOURS: std::ops::RangeInclusive<f64> = 1e-9..=1e12;
 /// Rates per hour that somebody can mean.
 const PER_HOUR: std::ops::RangeInclusive<f64> = 1e-12..=1e15;
-/// Bytes of a list, wherever it comes from.
-const MOST_BYTES: u64 = 4 << 20;
 
 /// A finite number; underscores may stand between digits.
 pub fn number(text: &str) -> Result<f64, String> {
@@ -197,67 +191,8 @@ pub fn pair(text: &str) -> Result<(f64, f64), String> {
     }
 }
 
-/// A list of at most `most` quantities: `text` itself, the file after `@`, or standard input for `-`.
-///
-/// # Errors
-/// One line that names the option, and the file and line or the entry, and what `item` has to say about it.
-pub fn list<T>(
-    option: &str,
-    text: &str,
-    most: usize,
-    item: impl Fn(&str) -> Result<T, String>,
-) -> Result<Vec<T>, Error> {
-    let refuse = |why: String| Error::Usage(format!("{option}: {why}"));
-    let (place, content) = match text.strip_prefix('@') {
-        _ if text.trim() == "-" => (Some("standard input"), read(std::io::stdin().lock(), "standard input")),
-        Some(path) => {
-            (Some(path), std::fs::File::open(path).map_err(|why| unreadable(path, &why)).and_then(|f| read(f, path)))
-        }
-        None => (None, Ok(text.to_owned())),
-    };
-    let content = content.map_err(refuse)?;
-    let mut values = Vec::new();
-    for (number, line) in content.lines().enumerate() {
-        let line = line.split_once('#').map_or(line, |(before, _)| before).trim();
-        if line.is_empty() {
-            continue;
-        }
-        for entry in line.split(',') {
-            if values.len() == most {
-                return Err(refuse(format!("more than {most} values, which is the most that are taken at once")));
-            }
-            let value = item(entry.trim()).map_err(|why| {
-                let at = place.map_or_else(
-                    || format!("entry {}", values.len() + 1),
-                    |name| format!("{} line {}", brief(name), number + 1),
-                );
-                refuse(format!("{at}: '{}': {why}", brief(entry.trim())))
-            })?;
-            values.push(value);
-        }
-    }
-    if values.is_empty() {
-        let at = place.map_or("the list".to_owned(), brief);
-        return Err(refuse(format!("{at} has no values; give some, such as 3,0,1")));
-    }
-    Ok(values)
-}
-
-fn read(from: impl Read, name: &str) -> Result<String, String> {
-    let mut content = String::new();
-    from.take(MOST_BYTES + 1).read_to_string(&mut content).map_err(|why| unreadable(name, &why))?;
-    if content.len() as u64 > MOST_BYTES {
-        return Err(format!("{} is longer than {} MiB; give fewer values", brief(name), MOST_BYTES >> 20));
-    }
-    Ok(content)
-}
-
-fn unreadable(name: &str, why: &std::io::Error) -> String {
-    format!("{} cannot be read: {why}; name a text file with one value or a row of values a line", brief(name))
-}
-
 /// A piece of what was given that fits into a line.
-fn brief(text: &str) -> String {
+pub fn brief(text: &str) -> String {
     let mut piece: String = text.chars().take(60).collect();
     if piece.len() < text.len() {
         piece.push('…');
@@ -389,24 +324,5 @@ mod tests {
         }
         assert_eq!((p_value("0"), p_value("1")), (Ok(0.0), Ok(1.0)));
         assert!(p_value("1.01").is_err() && p_value("-0.1").is_err());
-    }
-
-    #[test]
-    fn lists_from_the_line_and_from_files() {
-        assert_eq!(list("--counts", "3,0, 1,12", 4, count).unwrap(), [3, 0, 1, 12]);
-        let file = tempfile::NamedTempFile::new().unwrap();
-        std::fs::write(file.path(), "# by cpu\n3, 0\n\n1 # late\n12\n").unwrap();
-        let name = format!("@{}", file.path().display());
-        assert_eq!(list("--counts", &name, 4, count).unwrap(), [3, 0, 1, 12]);
-        std::fs::write(file.path(), "3\n# none\n4,x\n").unwrap();
-        let why = list("--counts", &name, 4, count).unwrap_err().to_string();
-        assert!(why.contains("--counts") && why.contains("line 3") && why.contains("'x'"), "{why}");
-        let why = |text: &str| list("--counts", text, 4, count).unwrap_err().to_string();
-        assert!(why("1,2,3,4,5").contains("more than 4"));
-        assert!(why("1,,2").contains("entry 2"));
-        assert!(why("").contains("no values") && why("# none").contains("no values"));
-        assert!(why("@/nonexistent").contains("/nonexistent cannot be read"));
-        assert!(why("@/dev/zero").contains("MiB") || why("@/dev/zero").contains("line"), "{}", why("@/dev/zero"));
-        assert!(why(&"9".repeat(1000)).len() < 300);
     }
 }

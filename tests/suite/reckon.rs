@@ -372,3 +372,27 @@ fn lists_come_from_files_and_standard_input() {
     child.stdin.take().unwrap().write_all(b"1\n2.5\n900\n").unwrap();
     assert_eq!(json(&child.wait_with_output().unwrap())["episodes"], 2);
 }
+
+/// Every command that README works out gives what README shows, as far as it shows it.
+#[test]
+fn the_readme_shows_what_comes_out() {
+    let readme = include_str!("../../README.md");
+    let (_, section) = readme.split_once("## Reckoning by hand\n").expect("the section");
+    let section = section.split("\n## ").next().unwrap();
+    let lines: String = section
+        .lines()
+        .filter_map(|l| if l.is_empty() { Some("") } else { l.strip_prefix("    ") })
+        .fold(String::new(), |all, line| all + line + "\n");
+    let mut shown = 0;
+    for block in lines.split("$ proofhouse reckon ").skip(1) {
+        let (command, output) = block.split_once('\n').unwrap();
+        let output = output.trim_end();
+        assert!(
+            !output.is_empty() && text(command).starts_with(output),
+            "{command}:\n{output}\nbut\n{}",
+            text(command)
+        );
+        shown += 1;
+    }
+    assert!(shown >= 6, "only {shown} worked commands");
+}

@@ -2,7 +2,7 @@
 
 use clap::Args;
 
-use super::{Confident, NOTATION, tell};
+use super::{Confident, tell};
 use crate::cli::args::Output;
 use crate::cli::quantity;
 use crate::error::Error;
@@ -12,7 +12,6 @@ use crate::report::reckon::compare::{Inputs, reckon};
 
 /// `reckon compare`.
 #[derive(Clone, Debug, Args)]
-#[command(before_help = NOTATION)]
 pub struct CompareArgs {
     /// The one, e.g. the suspect: 5/100h or 5/1000000 (runs)
     #[arg(long, value_name = "EVENTS/EXPOSURE", value_parser = quantity::observation, allow_hyphen_values = true)]

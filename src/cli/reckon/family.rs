@@ -2,9 +2,9 @@
 
 use clap::Args;
 
-use super::{NOTATION, tell};
+use super::tell;
 use crate::cli::args::Output;
-use crate::cli::quantity;
+use crate::cli::{lists, quantity};
 use crate::error::Error;
 use crate::exit_code::Exit;
 use crate::report::reckon::family::{Inputs, reckon};
@@ -14,7 +14,6 @@ const MOST_TESTS: usize = 50_000;
 
 /// `reckon family`.
 #[derive(Clone, Debug, Args)]
-#[command(before_help = NOTATION)]
 pub struct FamilyArgs {
     /// P-values of all tests that were made
     #[arg(long, value_name = "LIST", allow_hyphen_values = true)]
@@ -27,6 +26,6 @@ pub struct FamilyArgs {
 }
 
 pub fn run(args: &FamilyArgs) -> Result<Exit, Error> {
-    let p = quantity::list("--p", &args.p, MOST_TESTS, quantity::p_value)?;
+    let p = lists::list("--p", &args.p, MOST_TESTS, quantity::p_value)?;
     tell(&args.output, "--p", reckon(Inputs { p, level: args.level }))
 }

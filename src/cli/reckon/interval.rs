@@ -3,7 +3,7 @@
 use clap::builder::PossibleValue;
 use clap::{Args, ValueEnum};
 
-use super::{Confident, NOTATION, exposure, tell};
+use super::{Confident, exposure, tell};
 use crate::cli::args::Output;
 use crate::cli::quantity;
 use crate::error::Error;
@@ -13,7 +13,6 @@ use crate::report::reckon::{Exposure, Observation};
 
 /// `reckon interval`.
 #[derive(Clone, Debug, Args)]
-#[command(before_help = NOTATION)]
 pub struct IntervalArgs {
     /// Events seen: wrong results, failures
     #[arg(long, value_name = "COUNT", value_parser = quantity::count, allow_hyphen_values = true)]

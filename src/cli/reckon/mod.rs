@@ -14,13 +14,17 @@ use clap::{Args, Subcommand};
 use serde::Serialize;
 
 use super::args::{Format, Output};
-use super::{quantity, say, say_json};
+use super::{lists, quantity, say, say_json};
 use crate::error::Error;
 use crate::exit_code::Exit;
 use crate::report::reckon::{self, Exposure, Rate, Reckoned};
 use crate::stats::StatsError;
 
-/// Said by every calculator's help.
+/// What every calculator's help ends with: where its formulas are from, and how things are written.
+fn notes(sources: &str) -> String {
+    format!("{sources}\n\n{NOTATION}")
+}
+
 const NOTATION: &str = "\
 Write counts as 3, 1_000 or 1e9; times as 12.5h, 90m, 7d; rates as 1/500h or 0.002/h, probabilities per run as 1e-9 or \
 1/1000000; lists as 3,0,1 or @FILE or - (standard input), one value or a row of values a line, # begins a comment.";
@@ -29,37 +33,37 @@ Write counts as 3, 1_000 or 1e9; times as 12.5h, 90m, 7d; rates as 1/500h or 0.0
 #[derive(Clone, Debug, Subcommand)]
 pub enum ReckonCommand {
     /// How often: limits for a probability per run or a rate per hour, from what was seen
-    #[command(after_help = reckon::interval::SOURCES)]
+    #[command(after_help = notes(reckon::interval::SOURCES))]
     Interval(interval::IntervalArgs),
     /// What silence proves, or how long it has to last to prove a bound
-    #[command(after_help = reckon::zero::SOURCES)]
+    #[command(after_help = notes(reckon::zero::SOURCES))]
     Zero(zero::ZeroArgs),
     /// Is the first rate higher than the second: exact test and limits of the ratio
-    #[command(after_help = reckon::compare::SOURCES)]
+    #[command(after_help = notes(reckon::compare::SOURCES))]
     Compare(compare::CompareArgs),
     /// A test that stops as early as the evidence allows, with its exact risks
-    #[command(after_help = reckon::sequential::SOURCES)]
+    #[command(after_help = notes(reckon::sequential::SOURCES))]
     Sequential(sequential::SequentialArgs),
     /// How long a test has to be to notice something, or what it would notice
-    #[command(after_help = reckon::power::SOURCES)]
+    #[command(after_help = notes(reckon::power::SOURCES))]
     Power(power::PowerArgs),
     /// Do events cluster, and which limits hold then
-    #[command(after_help = reckon::spread::SPREAD_SOURCES)]
+    #[command(after_help = notes(reckon::spread::SPREAD_SOURCES))]
     Spread(spread::SpreadArgs),
     /// How many episodes events make that come close together
-    #[command(after_help = reckon::spread::EPISODES_SOURCE)]
+    #[command(after_help = notes(reckon::spread::EPISODES_SOURCE))]
     Episodes(spread::EpisodesArgs),
     /// Many tests at once: adjusted p-values and what each method promises
-    #[command(after_help = reckon::family::SOURCES)]
+    #[command(after_help = notes(reckon::family::SOURCES))]
     Family(family::FamilyArgs),
     /// Many cells with few events: every rate pulled towards what all have in common
-    #[command(after_help = reckon::shrink::SOURCES)]
+    #[command(after_help = notes(reckon::shrink::SOURCES))]
     Shrink(shrink::ShrinkArgs),
     /// How a rate goes with temperature
-    #[command(after_help = reckon::slope::SLOPE_SOURCES)]
+    #[command(after_help = notes(reckon::slope::SLOPE_SOURCES))]
     Slope(slope::SlopeArgs),
     /// A ratio of sums over units that are not alike
-    #[command(after_help = reckon::slope::RATIO_SOURCES)]
+    #[command(after_help = notes(reckon::slope::RATIO_SOURCES))]
     Ratio(slope::RatioArgs),
 }
 
@@ -144,7 +148,7 @@ fn exposures(
         Ok(_) => quantity::positive(entry).map(|value| (value, false)),
         Err(_) => quantity::time(entry).map(|hours| (hours, true)),
     };
-    let values = quantity::list("--exposures", text, most, plain)?;
+    let values = lists::list("--exposures", text, most, plain)?;
     if values.len() != counts {
         let values = values.len();
         return Err(Error::Usage(format!("--exposures: {values} values beside {counts} counts; give one for each")));
@@ -158,7 +162,7 @@ fn exposures(
 
 /// Counts whose sum is a count as well.
 fn counts(text: &str, most: usize) -> Result<Vec<u64>, Error> {
-    let counts = quantity::list("--counts", text, most, quantity::count)?;
+    let counts = lists::list("--counts", text, most, quantity::count)?;
     let sum: u128 = counts.iter().map(|&count| u128::from(count)).sum();
     if sum > 1 << 53 {
         return Err(Error::Usage("--counts: together more than 2^53; give smaller counts".to_owned()));

@@ -2,7 +2,7 @@
 
 use clap::Args;
 
-use super::{NOTATION, exposure, per_hour, tell};
+use super::{exposure, per_hour, tell};
 use crate::cli::args::Output;
 use crate::cli::quantity;
 use crate::error::Error;
@@ -21,7 +21,6 @@ const SPLITS: std::ops::RangeInclusive<f64> = 0.1..=100.0;
 
 /// `reckon power`.
 #[derive(Clone, Debug, Args)]
-#[command(before_help = NOTATION)]
 pub struct PowerArgs {
     #[command(flatten)]
     what: What,

@@ -2,7 +2,7 @@
 
 use clap::Args;
 
-use super::{NOTATION, per_hour, tell};
+use super::{per_hour, tell};
 use crate::cli::args::Output;
 use crate::cli::quantity;
 use crate::error::Error;
@@ -19,7 +19,6 @@ const MOST_EVENTS: u64 = 10_000;
 
 /// `reckon sequential`.
 #[derive(Clone, Debug, Args)]
-#[command(before_help = NOTATION)]
 pub struct SequentialArgs {
     /// A rate that should pass, e.g. 1/1000h, or a probability per run
     #[arg(long, value_name = "RATE", value_parser = quantity::rate, allow_hyphen_values = true)]

@@ -2,7 +2,7 @@
 
 use clap::Args;
 
-use super::{Confident, NOTATION, counts, exposures, one_from_input, tell};
+use super::{Confident, counts, exposures, one_from_input, tell};
 use crate::cli::args::Output;
 use crate::error::Error;
 use crate::exit_code::Exit;
@@ -13,7 +13,6 @@ const MOST_CELLS: usize = 300;
 
 /// `reckon shrink`.
 #[derive(Clone, Debug, Args)]
-#[command(before_help = NOTATION)]
 pub struct ShrinkArgs {
     /// Events by cell: one count a core, a kernel, a host
     #[arg(long, value_name = "LIST", allow_hyphen_values = true)]

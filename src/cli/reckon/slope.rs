@@ -2,9 +2,9 @@
 
 use clap::Args;
 
-use super::{Confident, NOTATION, tell};
+use super::{Confident, tell};
 use crate::cli::args::Output;
-use crate::cli::quantity;
+use crate::cli::{lists, quantity};
 use crate::error::Error;
 use crate::exit_code::Exit;
 use crate::report::reckon::slope::{self, At, Pairs, Readings};
@@ -16,7 +16,6 @@ const MOST_PAIRS: usize = 100_000;
 
 /// `reckon slope`.
 #[derive(Clone, Debug, Args)]
-#[command(before_help = NOTATION)]
 pub struct SlopeArgs {
     /// Events, time and temperature of each reading: 3/10h@61,0/12h@55
     #[arg(long, value_name = "LIST", allow_hyphen_values = true)]
@@ -31,7 +30,7 @@ pub struct SlopeArgs {
 }
 
 pub fn slope(args: &SlopeArgs) -> Result<Exit, Error> {
-    let readings = quantity::list("--readings", &args.readings, MOST_READINGS, quantity::reading)?;
+    let readings = lists::list("--readings", &args.readings, MOST_READINGS, quantity::reading)?;
     let readings = readings.into_iter().map(|(events, hours, celsius)| At { events, hours, celsius }).collect();
     let inputs = Readings { readings, at: args.at, confidence: args.confident.confidence };
     tell(&args.output, "--readings", slope::slope(inputs))
@@ -39,7 +38,6 @@ pub fn slope(args: &SlopeArgs) -> Result<Exit, Error> {
 
 /// `reckon ratio`.
 #[derive(Clone, Debug, Args)]
-#[command(before_help = NOTATION)]
 pub struct RatioArgs {
     /// What was counted and in how much, by unit: 3/10,4/20
     #[arg(long, value_name = "LIST", allow_hyphen_values = true)]
@@ -51,6 +49,6 @@ pub struct RatioArgs {
 }
 
 pub fn ratio(args: &RatioArgs) -> Result<Exit, Error> {
-    let pairs = quantity::list("--pairs", &args.pairs, MOST_PAIRS, quantity::pair)?;
+    let pairs = lists::list("--pairs", &args.pairs, MOST_PAIRS, quantity::pair)?;
     tell(&args.output, "--pairs", slope::ratio(Pairs { pairs, confidence: args.confident.confidence }))
 }

@@ -2,9 +2,9 @@
 
 use clap::Args;
 
-use super::{Confident, NOTATION, counts, exposures, one_from_input, tell};
+use super::{Confident, counts, exposures, one_from_input, tell};
 use crate::cli::args::Output;
-use crate::cli::quantity;
+use crate::cli::{lists, quantity};
 use crate::error::Error;
 use crate::exit_code::Exit;
 use crate::report::reckon::spread::{self, Counts, Times};
@@ -16,7 +16,6 @@ const MOST_TIMES: usize = 100_000;
 
 /// `reckon spread`.
 #[derive(Clone, Debug, Args)]
-#[command(before_help = NOTATION)]
 pub struct SpreadArgs {
     /// Events by cluster: one count a day, a core, a host
     #[arg(long, value_name = "LIST", allow_hyphen_values = true)]
@@ -40,7 +39,6 @@ pub fn spread(args: &SpreadArgs) -> Result<Exit, Error> {
 
 /// `reckon episodes`.
 #[derive(Clone, Debug, Args)]
-#[command(before_help = NOTATION)]
 pub struct EpisodesArgs {
     /// When events came, in seconds on any one clock, in any order
     #[arg(long, value_name = "LIST", allow_hyphen_values = true)]
@@ -65,7 +63,7 @@ pub fn episodes(args: &EpisodesArgs) -> Result<Exit, Error> {
         time if time.abs() <= MOST_SECONDS => Ok(time),
         _ => Err(format!("more than {MOST_SECONDS:e} seconds away; give seconds on one clock")),
     };
-    let times_s = quantity::list("--times", &args.times, MOST_TIMES, second)?;
+    let times_s = lists::list("--times", &args.times, MOST_TIMES, second)?;
     let inputs = Times { times_s, gap_s: args.gap, hours: args.hours, confidence: args.confident.confidence };
     tell(&args.output, "--times", spread::episodes(inputs))
 }

@@ -2,7 +2,7 @@
 
 use clap::Args;
 
-use super::{Confident, NOTATION, tell};
+use super::{Confident, tell};
 use crate::cli::args::Output;
 use crate::cli::quantity;
 use crate::error::Error;
@@ -12,7 +12,6 @@ use crate::report::reckon::{Exposure, Rate};
 
 /// `reckon zero`.
 #[derive(Clone, Debug, Args)]
-#[command(before_help = NOTATION)]
 pub struct ZeroArgs {
     #[command(flatten)]
     what: What,

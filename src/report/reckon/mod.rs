@@ -243,10 +243,16 @@ pub(super) fn chance(p: f64) -> String {
     match p {
         0.0 => "0".to_owned(),
         p if p < 1e-4 => short(p),
-        p if p < 0.999 => format!("{} %", short(100.0 * p)),
+        p if p < 0.999 => format!("{} %", short(three_digits(100.0 * p))),
         p if p < 1.0 => format!("{:.4} %", (1e6 * p).floor().min(999_999.0) / 1e4),
         _ => "100 %".to_owned(),
     }
+}
+
+/// Rounded to three digits, so that 9.9999 is written as 10.0 and not as 10.00.
+fn three_digits(value: f64) -> f64 {
+    let step = 10f64.powi(value.abs().log10().floor() as i32 - 2);
+    (value / step).round() * step
 }
 
 #[cfg(test)]
@@ -270,7 +276,8 @@ mod tests {
             assert_eq!(chance(p), text);
         }
         assert_eq!(chance(1.0 - 1e-12), "99.9999 %");
-        assert_eq!(chance(0.9985), "99.8 %");
+        assert_eq!(chance(0.9983), "99.8 %");
+        assert_eq!((chance(0.099_999), chance(0.009_999_9)), ("10.0 %".to_owned(), "1.00 %".to_owned()));
     }
 
     #[test]

@@ -3,7 +3,7 @@
 
 use serde::Serialize;
 
-use super::{Exposure, Method, Rate, Reckoned, at_least, chance, counted, hours, hours_at_least, prose, whole};
+use super::{Method, Rate, Reckoned, at_least, chance, counted, hours, hours_at_least, prose, whole};
 use crate::report::figures::short;
 use crate::report::text::Table;
 use crate::stats::{OperatingPoint, RunLines, SequentialPlan, StatsError};
