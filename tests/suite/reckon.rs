@@ -396,3 +396,17 @@ fn the_readme_shows_what_comes_out() {
     }
     assert!(shown >= 6, "only {shown} worked commands");
 }
+
+/// Of many tests the text lists the smallest p-values under their own numbers; the document has all.
+#[test]
+fn a_long_family_is_listed_from_its_smallest() {
+    let scratch = Scratch::new("reckon-family");
+    let path = scratch.path().join("p");
+    let list: String = (0..300).map(|i| format!("{}\n", 1.0 - f64::from(i) / 300.0)).collect();
+    std::fs::write(&path, list).unwrap();
+    let command = format!("family --p @{}", path.display());
+    let plain = text(&command);
+    let first = plain.lines().skip_while(|l| !l.starts_with("test ")).nth(1).unwrap();
+    assert!(first.trim().starts_with("300 ") && plain.contains("100 smallest of 300"), "{plain}");
+    assert_eq!(reckon(&command)["holm"]["adjusted"].as_array().unwrap().len(), 300);
+}

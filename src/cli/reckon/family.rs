@@ -9,8 +9,8 @@ use crate::error::Error;
 use crate::exit_code::Exit;
 use crate::report::reckon::family::{Inputs, reckon};
 
-/// Tests that are taken at once.
-const MOST_TESTS: usize = 50_000;
+/// Tests that are taken at once: room for sixty kernels on every core of 256.
+const MOST_TESTS: usize = 16_384;
 
 /// `reckon family`.
 #[derive(Clone, Debug, Args)]

@@ -9,7 +9,7 @@ use crate::exit_code::Exit;
 use crate::report::reckon::shrink::{Inputs, reckon};
 
 /// Cells that are taken at once: the likelihood of all is summed some thousand times.
-const MOST_CELLS: usize = 300;
+const MOST_CELLS: usize = 256;
 
 /// `reckon shrink`.
 #[derive(Clone, Debug, Args)]

@@ -12,7 +12,7 @@ use crate::report::reckon::slope::{self, At, Pairs, Readings};
 /// Readings that are taken at once.
 const MOST_READINGS: usize = 2_000;
 /// Pairs that are taken at once.
-const MOST_PAIRS: usize = 100_000;
+const MOST_PAIRS: usize = 50_000;
 
 /// `reckon slope`.
 #[derive(Clone, Debug, Args)]

@@ -10,9 +10,9 @@ use crate::exit_code::Exit;
 use crate::report::reckon::spread::{self, Counts, Times};
 
 /// Counts that are taken at once: the likelihood of all is summed some thousand times.
-const MOST_COUNTS: usize = 800;
+const MOST_COUNTS: usize = 600;
 /// Times that are taken at once.
-const MOST_TIMES: usize = 100_000;
+const MOST_TIMES: usize = 20_000;
 
 /// `reckon spread`.
 #[derive(Clone, Debug, Args)]

@@ -41,6 +41,9 @@ const FAMILY: &str = "the chance of any false alarm is at most the level; any de
 const FAMILY_IF: &str = "the same; tests independent or positively dependent";
 const SHARE: &str = "the expected share of false alarms is at most the level; tests alike";
 
+/// Tests that the text lists one by one.
+const LISTED: usize = 100;
+
 /// Reckons.
 ///
 /// # Errors
@@ -73,11 +76,18 @@ pub fn reckon(inputs: Inputs) -> Result<Reckoned<Inputs, Answer>, StatsError> {
         promises.row([(*name).to_owned(), a.rejected.to_string(), a.promise.to_owned()]);
     });
     let mut table = Table::new(&["test", "p", "Bonferroni", "Holm", "Hochberg", "Benjamini-Hochberg"]);
-    for (test, p) in inputs.p.iter().enumerate() {
-        let cells = methods.iter().map(|(_, a)| short(a.adjusted[test]));
-        table.row([(test + 1).to_string(), short(*p)].into_iter().chain(cells));
+    let mut order: Vec<usize> = (0..inputs.p.len()).collect();
+    let mut more = String::new();
+    if order.len() > LISTED {
+        order.sort_by(|&a, &b| inputs.p[a].total_cmp(&inputs.p[b]));
+        order.truncate(LISTED);
+        more = format!(", the {LISTED} smallest of {} (--format json has all)", inputs.p.len());
     }
-    let figures = format!("{}\nAdjusted p-values:\n{}", promises.text(), table.text());
+    for test in order {
+        let cells = methods.iter().map(|(_, a)| short(a.adjusted[test]));
+        table.row([(test + 1).to_string(), short(inputs.p[test])].into_iter().chain(cells));
+    }
+    let figures = format!("{}\nAdjusted p-values{more}:\n{}", promises.text(), table.text());
     Ok(Reckoned::new("family", inputs, answer, METHOD, statement, figures))
 }
 
