@@ -10,4 +10,5 @@ mod pacing;
 mod running;
 mod statistics;
 mod statistics_edges;
+mod statistics_planning;
 mod supervisor;
