@@ -150,34 +150,36 @@ impl Line {
         let (above, below) = (mean_from(&|at| (at - least) / range), mean_from(&|at| (most - at) / range));
         let (end, sign, mean) = if above < below { (least, 1.0, above) } else { (most, -1.0, below) };
         let distances: Vec<f64> = readings.iter().map(|reading| sign * (reading.at - end) / range).collect();
-        let weights = |slope: f64| {
-            let logs: Vec<f64> = readings
-                .iter()
-                .zip(&distances)
-                .map(|(reading, d)| reading.exposure.ln() + slope * (d - mean))
-                .collect();
-            let peak = logs.iter().copied().fold(f64::NEG_INFINITY, f64::max);
-            let terms: Vec<f64> = logs.iter().map(|ln| (ln - peak).exp()).collect();
-            let total: f64 = terms.iter().sum();
-            (terms, total, peak)
+        let ln_weights = |slope: f64| -> Vec<f64> {
+            readings.iter().zip(&distances).map(|(reading, d)| reading.exposure.ln() + slope * (d - mean)).collect()
         };
+        // what lies beyond the mean over what lies before it, each from positive terms and both as logarithms
         let excess = |slope: f64| {
-            let (terms, total, _) = weights(slope);
-            let moment: f64 = terms.iter().zip(&distances).map(|(term, d)| term * d).sum();
-            (moment / total / mean).ln()
+            let moments = ln_weights(slope).into_iter().zip(&distances);
+            let (beyond, before): (Vec<_>, Vec<_>) =
+                moments.map(|(ln, d)| (ln, d - mean)).partition(|part| part.1 > 0.0);
+            let side = |parts: Vec<(f64, f64)>| ln_sum(parts.iter().map(|(ln, away)| ln + away.abs().ln()));
+            side(beyond) - side(before)
         };
         let slope = root(excess, true, 0.0, 1.0, (-STEEPEST, STEEPEST));
-        let (terms, total, peak) = weights(slope);
-        let fitted: Vec<f64> = terms.iter().map(|term| events as f64 * (term / total)).collect();
+        let logs = ln_weights(slope);
+        let ln_total = ln_sum(logs.iter().copied());
+        let fitted: Vec<f64> = logs.iter().map(|ln| events as f64 * (ln - ln_total).exp()).collect();
         let spread: f64 = fitted.iter().zip(&distances).map(|(fit, d)| fit * (d - mean).powi(2)).sum();
         Ok(Self {
             slope: sign * slope / range,
             at_mean: end + sign * mean * range,
             fitted,
             spread: spread * range * range,
-            rate: (events as f64 / total) * (-peak).exp(),
+            rate: events as f64 * (-ln_total).exp(),
         })
     }
+}
+
+/// ln Σ exp(term).
+fn ln_sum(terms: impl Iterator<Item = f64> + Clone) -> f64 {
+    let peak = terms.clone().fold(f64::NEG_INFINITY, f64::max);
+    peak + terms.map(|term| (term - peak).exp()).sum::<f64>().ln()
 }
 
 /// One reading's part of Pearson's χ².

@@ -114,8 +114,11 @@ impl Counts {
     /// Derivative of the log likelihood by the shape.
     fn shape_score(&self, rate: f64, shape: f64) -> f64 {
         let part = |(x, t): &(f64, f64)| {
-            let expected = rate * t;
-            ln_1p_minus((x - expected) / (shape + expected)) + digamma_excess(shape, *x)
+            let (expected, whole) = (rate * t, shape + rate * t);
+            let u = (x - expected) / whole;
+            // 1 + u = (shape + x) / whole, of which u near −1 has lost the digits
+            let log = if u < -0.5 { ((shape + x) / whole).ln() - u } else { ln_1p_minus(u) };
+            log + digamma_excess(shape, *x)
         };
         self.cells.iter().map(part).sum()
     }

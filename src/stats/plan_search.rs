@@ -10,7 +10,7 @@ use super::interval::{StatsError, check_open_probability, check_positive};
 use super::law::WHOLE;
 use super::numerics::root;
 use super::poisson::{lower_mean, upper_mean};
-use super::sequential::{SequentialPlan, wald_bounds};
+use super::sequential::SequentialPlan;
 use super::walk::Walk;
 
 /// Events up to which a plan is worked out.
@@ -21,34 +21,37 @@ const LEAST_RATIO: f64 = 1.05;
 
 impl SequentialPlan {
     /// A plan between a good rate and a bad one (same unit, one over the exposure) whose exact risks are at most `alpha`
-    /// (of rejecting the good rate) and `beta` (of accepting the bad one): Wald's, drawn a little wider and cut off at
-    /// the least number of events at which that holds.
+    /// (of rejecting the good rate) and `beta` (of accepting the bad one): Wald's lines, so far apart that without an end
+    /// they would keep four fifths of both risks, cut off at the least number of events at which the exact ones are kept.
+    /// At either rate it takes in the mean half to three quarters of the exposure of
+    /// [`SequentialPlan::fixed_with_risks`], at the longest up to 1.3 times as much. If that plan rejects at the first
+    /// event there is nothing to gain, and it is the answer.
     ///
     /// # Errors
-    /// Rates not positive and finite, `bad` less than 1.05 times `good`, risks outside (0, 0.5), or a plan of more than
-    /// 20,000 events.
+    /// Rates not positive and finite, `bad` less than 1.05 times `good`, risks below 10⁻⁹ or not below a half, or a plan
+    /// of more than 20,000 events.
     pub fn with_risks(good: f64, bad: f64, alpha: f64, beta: f64) -> Result<Self, StatsError> {
-        check_rates(good, bad, alpha, beta)?;
-        Self::with_share(good, bad, alpha, beta, SHARE)
-    }
-
-    /// The same with Wald's lines drawn for this share of both risks.
-    fn with_share(good: f64, bad: f64, alpha: f64, beta: f64, share: f64) -> Result<Self, StatsError> {
-        let lines = Lines::between(good, bad, share * alpha, share * beta)?;
-        let mut search = Search { lines, alpha, beta, good: Track::new(good), bad: Track::new(bad) };
-        let too_close = StatsError::TooClose { low: good, high: bad, most: MOST_EVENTS as u64 };
-        let (mut no, mut step) = (0, 1);
-        while search.end(no + step).is_none() {
-            (no, step) = (no + step, 2 * step);
-            if no + step > MOST_EVENTS {
-                return Err(too_close);
+        let fixed = Self::fixed_with_risks(good, bad, alpha, beta)?;
+        let counting = fixed.accept_at.len();
+        if counting == 1 {
+            return Ok(fixed);
+        }
+        let lines = Lines::between(good, bad, SHARE * alpha, SHARE * beta);
+        // a plan with much fewer events than one that only counts cannot keep the risks
+        let from = counting / 2;
+        let mut search = Search { lines, alpha, beta, good: Track::new(good, from), bad: Track::new(bad, from) };
+        let (mut no, mut yes) = (from, counting.max(from + 1));
+        while search.end(yes).is_none() {
+            (no, yes) = (yes, yes + counting / 8 + 1);
+            if yes > MOST_EVENTS {
+                return Err(too_close(good, bad));
             }
         }
-        let mut yes = no + step;
         while yes - no > 1 {
             let middle = no + (yes - no) / 2;
             if search.end(middle).is_some() { yes = middle } else { no = middle }
         }
+        // the risks of the plan as it is handed out have the last word
         for events in yes..=MOST_EVENTS {
             let Some(end) = search.end(events) else { continue };
             let plan = search.lines.plan(events, end);
@@ -56,7 +59,7 @@ impl SequentialPlan {
                 return Ok(plan);
             }
         }
-        Err(too_close)
+        Err(too_close(good, bad))
     }
 
     /// The shortest plan that only counts and whose exact risks are at most `alpha` and `beta`; see
@@ -78,7 +81,7 @@ impl SequentialPlan {
         while !fits(yes) {
             (no, yes) = (yes, 2 * yes);
             if no > MOST_EVENTS {
-                return Err(StatsError::TooClose { low: good, high: bad, most: MOST_EVENTS as u64 });
+                return Err(too_close(good, bad));
             }
         }
         while yes - no > 1 {
@@ -89,8 +92,11 @@ impl SequentialPlan {
     }
 }
 
-/// The share of both risks that the lines are drawn for; the rest is for the cut.
+/// The share of both risks that goes to the lines; the rest is for the cut.
 const SHARE: f64 = 0.8;
+
+/// Risks from which on plans are worked out.
+const LEAST_RISK: f64 = 1e-9;
 
 /// Room for the rounding of an exact risk.
 const ROUNDING: f64 = 1e-13;
@@ -101,8 +107,9 @@ fn check_rates(good: f64, bad: f64, alpha: f64, beta: f64) -> Result<(), StatsEr
     check_positive("bad minus good rate", bad - good, "a bad rate above the good one")?;
     for (name, risk) in [("risk alpha", alpha), ("risk beta", beta)] {
         check_open_probability(name, risk)?;
-        if risk >= 0.5 {
-            return Err(StatsError::OutOfRange { name, value: risk, remedy: "less than a half, such as 0.1" });
+        if !(LEAST_RISK..0.5).contains(&risk) {
+            let remedy = "a risk from 1e-9 to below a half, such as 0.1";
+            return Err(StatsError::OutOfRange { name, value: risk, remedy });
         }
     }
     let ratio = bad / good;
@@ -111,6 +118,10 @@ fn check_rates(good: f64, bad: f64, alpha: f64, beta: f64) -> Result<(), StatsEr
         return Err(StatsError::OutOfRange { name: "bad over good rate", value: ratio, remedy });
     }
     Ok(())
+}
+
+fn too_close(good: f64, bad: f64) -> StatsError {
+    StatsError::TooClose { low: good, high: bad, most: MOST_EVENTS as u64 }
 }
 
 /// Wald's lines: accept at slope · k + up, reject at slope · k − down.
@@ -122,10 +133,11 @@ struct Lines {
 }
 
 impl Lines {
-    fn between(good: f64, bad: f64, alpha: f64, beta: f64) -> Result<Self, StatsError> {
-        let (up, down) = wald_bounds(alpha, beta)?;
+    /// Likelihood ratios of 1 / alpha and beta bound the risks by just these (A. Wald, Sequential Analysis, 3.2);
+    /// the usual (1 − beta) / alpha and beta / (1 − alpha) keep only the sum of both.
+    fn between(good: f64, bad: f64, alpha: f64, beta: f64) -> Self {
         let gap = bad - good;
-        Ok(Self { slope: (gap / good).ln_1p() / gap, up: up / gap, down: down / gap })
+        Self { slope: (gap / good).ln_1p() / gap, up: -beta.ln() / gap, down: -alpha.ln() / gap }
     }
 
     fn accept(&self, k: usize) -> f64 {
@@ -155,31 +167,35 @@ struct Track {
     walk: Walk,
     rejecting: usize,
     accepting: usize,
-    /// `seen[k]`: where the reject line of event number k is crossed.
+    /// Where the reject line of event number `from` ends, and of each one after it.
     seen: Vec<Walk>,
+    from: usize,
 }
 
 impl Track {
-    fn new(rate: f64) -> Self {
-        Self { walk: Walk::new(rate), rejecting: 1, accepting: 0, seen: vec![Walk::new(rate)] }
+    fn new(rate: f64, from: usize) -> Self {
+        Self { walk: Walk::new(rate), rejecting: 0, accepting: 0, seen: Vec::new(), from }
     }
 
-    /// The state up to which a plan that ends with event number `events` is the same as the endless one.
+    /// The state where the reject line of this event number ends. Up to there a plan that is cut off at any later one
+    /// is the same as the endless plan.
     fn until(&mut self, lines: &Lines, events: usize) -> &Walk {
-        while self.seen.len() <= events {
-            let cut = lines.reject(self.seen.len());
-            while cut > 0.0 && lines.accept(self.accepting) < cut {
-                self.walk.forward(lines.accept(self.accepting), self.rejecting);
-                self.accepting += 1;
-                self.walk.accept_below(self.accepting);
-            }
+        while self.from + self.seen.len() <= events {
+            let cut = lines.reject(self.rejecting);
             if cut > 0.0 {
+                while lines.accept(self.accepting) < cut {
+                    self.walk.forward(lines.accept(self.accepting), self.rejecting);
+                    self.accepting += 1;
+                    self.walk.accept_below(self.accepting);
+                }
                 self.walk.forward(cut, self.rejecting);
             }
-            self.rejecting = self.seen.len() + 1;
-            self.seen.push(self.walk.clone());
+            if self.rejecting >= self.from {
+                self.seen.push(self.walk.clone());
+            }
+            self.rejecting += 1;
         }
-        &self.seen[events]
+        &self.seen[events - self.from]
     }
 }
 
@@ -195,7 +211,7 @@ impl Search {
     /// The exposure at which a plan that ends with event number `events` has to end so that both risks are kept.
     fn end(&mut self, events: usize) -> Option<f64> {
         let Self { lines, alpha, beta, good, bad } = self;
-        let mut walk = bad.until(lines, events).clone();
+        let mut walk = bad.until(lines, events - 1).clone();
         // the later the end, the less of the bad rate is accepted
         let end = loop {
             let k = walk.first();
@@ -211,7 +227,7 @@ impl Search {
             walk.forward(line, events);
             walk.accept_below(k + 1);
         };
-        let mut walk = good.until(lines, events).clone();
+        let mut walk = good.until(lines, events - 1).clone();
         while walk.first() < events && lines.accept(walk.first()) < end {
             let k = walk.first();
             walk.forward(lines.accept(k), events);

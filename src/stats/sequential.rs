@@ -179,7 +179,7 @@ impl SequentialPlan {
 }
 
 /// ln((1 − alpha) / beta) and ln((1 − beta) / alpha).
-pub(super) fn wald_bounds(alpha: f64, beta: f64) -> Result<(f64, f64), StatsError> {
+fn wald_bounds(alpha: f64, beta: f64) -> Result<(f64, f64), StatsError> {
     check_open_probability("risk alpha", alpha)?;
     check_open_probability("risk beta", beta)?;
     Ok((((1.0 - alpha) / beta).ln(), ((1.0 - beta) / alpha).ln()))

@@ -12,4 +12,5 @@ mod reckon_refusals;
 mod running;
 mod statistics;
 mod statistics_edges;
+mod statistics_planning;
 mod supervisor;
