@@ -2,7 +2,7 @@
 //! `[function, argument, …]`, one JSON array of numbers out (`null` for +∞), or `{"error": …}`. Numbers travel as
 //! strings so that every double arrives bit for bit; lists are separated by spaces.
 
-use proofhouse::stats::{self, Interval, Observed, StatsError};
+use proofhouse::stats::{self, Interval, Observed, Reading, SequentialPlan, StatsError};
 use std::io::{self, BufRead, Write};
 
 fn main() -> io::Result<()> {
@@ -80,6 +80,47 @@ fn answer(words: &[String]) -> Result<Vec<f64>, StatsError> {
             let plan = stats::SequentialPlan::wald(number(1), number(2), number(3), number(4), count(5) as usize)?;
             let point = plan.at_rate(number(6))?;
             vec![point.accept, point.reject, point.expected_exposure]
+        }
+        "plan_risks" | "fixed_plan" => {
+            let search =
+                if words[0] == "fixed_plan" { SequentialPlan::fixed_with_risks } else { SequentialPlan::with_risks };
+            let (good, bad) = (number(1), number(2));
+            let plan = search(good, bad, number(3), number(4))?;
+            let (at_good, at_bad) = (plan.at_rate(good)?, plan.at_rate(bad)?);
+            let risks = [at_good.reject, at_bad.accept, at_good.expected_exposure, at_bad.expected_exposure];
+            // an event number that never rejects has a rejection time of 0
+            let boundaries = plan.accept_at.iter().copied().chain(plan.reject_at.iter().map(|at| at.unwrap_or(0.0)));
+            risks.into_iter().chain([plan.longest()]).chain(boundaries).collect()
+        }
+        "jackknife_ratio" => {
+            let pairs: Vec<(f64, f64)> = numbers(1).into_iter().zip(numbers(2)).collect();
+            let found = stats::jackknife_ratio(&pairs)?;
+            let interval = found.interval(number(3))?;
+            vec![found.ratio, found.bias, found.standard_error, interval.lower, interval.upper]
+        }
+        "log_linear" => {
+            let readings: Vec<Reading> = counts(1)
+                .into_iter()
+                .zip(numbers(2).into_iter().zip(numbers(3)))
+                .map(|(events, (exposure, at))| Reading { events, exposure, at })
+                .collect();
+            let found = stats::log_linear(&readings, number(4))?;
+            let away = found.rate_at(number(5))?;
+            let intervals = [found.slope, found.factor_per_ten, found.rate_at_mean, away];
+            let ends = intervals.iter().flat_map(|i| [i.estimate, i.lower, i.upper]);
+            ends.chain([found.dispersion, f64::from(u8::from(found.widened))]).collect()
+        }
+        "negative_binomial_rate" => {
+            let clusters: Vec<(u64, f64)> = counts(1).into_iter().zip(numbers(2)).collect();
+            let found = stats::negative_binomial_rate(&clusters, number(3))?;
+            vec![found.rate.estimate, found.rate.lower, found.rate.upper, found.shape.unwrap_or(f64::INFINITY)]
+        }
+        "exposure_to_compare" => {
+            vec![stats::exposure_to_compare(number(1), number(2), number(3), number(4), number(5))?]
+        }
+        "exposure_to_show_below" => {
+            let found = stats::exposure_to_show_below(number(1), number(2), number(3), number(4))?;
+            vec![found.exposure, found.failures_allowed as f64, found.probability]
         }
         "comparison_power" => {
             vec![stats::comparison_power((number(1), number(2)), (number(3), number(4)), number(5))?]

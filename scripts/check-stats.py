@@ -19,9 +19,11 @@ import random
 import subprocess
 import sys
 import warnings
+from fractions import Fraction
 
 import mpmath as mp
 import numpy as np
+import statsmodels.api as sm
 from scipy import linalg, optimize, special, stats
 from statsmodels.stats.multitest import multipletests
 
@@ -241,6 +243,178 @@ def comparison_power(m1, t1, m2, t2, level):
     return OURS if max(power, *OURS) < 1e-15 else (power,)  # smaller ones are not resolved, and of no use
 
 
+def jackknife_ratio(tops, bottoms, conf):
+    """Leaving one out in exact fractions."""
+    pairs = [(Fraction(n), Fraction(d)) for n, d in zip(tops, bottoms)]
+    m, top, bottom = len(pairs), sum(n for n, _ in pairs), sum(d for _, d in pairs)
+    ratio, without = top / bottom, [(top - n) / (bottom - d) for n, d in pairs]
+    mean = sum(without) / m
+    error = mp.sqrt(exact((m - 1) * sum((v - mean) ** 2 for v in without) / m))
+    reach = error * mp.mpf(stats.t.isf((1 - conf) / 2, m - 1))
+    middle = exact(ratio)
+    return tuple(float(v) for v in (middle, exact((m - 1) * (mean - ratio)), error, middle - reach, middle + reach))
+
+
+def exact(fraction):
+    return mp.mpf(fraction.numerator) / fraction.denominator
+
+
+def line_limits(slope, level, at_mean, conf, away, chi, cov, readings):
+    """Everything that the program prints, from the fit and the covariance of level and slope at at_mean."""
+    degrees, side = readings - 2, (1 - conf) / 2
+    wide = chi > degrees and stats.chi2.sf(float(chi), degrees) <= 0.05
+    reach = float(stats.t.isf(side, degrees)) * mp.sqrt(chi / degrees) if wide else float(stats.norm.isf(side))
+    around = lambda middle, variance: [middle + sign * reach * mp.sqrt(variance) for sign in (0, -1, 1)]
+    far = away - at_mean
+    lines = [
+        around(slope, cov[1][1]),
+        [mp.exp(10 * v) for v in around(slope, cov[1][1])],
+        [mp.exp(v) for v in around(level, cov[0][0])],
+        [mp.exp(v) for v in around(level + far * slope, cov[0][0] + 2 * far * cov[0][1] + far * far * cov[1][1])],
+    ]
+    scatter = float(chi / degrees)
+    if max(scatter, OURS[12]) < 1e-9:
+        scatter = OURS[12]  # a line through all readings: what is left is rounding
+    return tuple(float(v) for line in lines for v in line) + (scatter, float(wide))
+
+
+def log_linear(counts, exposures, at, conf, away):
+    x, t, y = np.array(at), np.array(exposures), np.array(counts, float)
+    middle = (x * y).sum() / y.sum()
+    design = np.column_stack([np.ones(len(x)), x - middle])
+    fit = sm.GLM(y, design, family=sm.families.Poisson(), offset=np.log(t)).fit(tol=1e-15, maxiter=200)
+    return line_limits(fit.params[1], fit.params[0], middle, conf, away, fit.pearson_chi2, fit.cov_params(), len(y))
+
+
+def nb_tables(counts, exposures):
+    x, t = np.array(counts, float), np.array(exposures)
+
+    def likelihood(rate, k):
+        m = rate * t
+        parts = special.gammaln(x + k) - special.gammaln(k) - special.gammaln(x + 1) - (x + k) * np.log1p(m / k)
+        return (parts + x * np.log(m / k)).sum()
+
+    def by_shape(rate, k):
+        m = rate * t
+        return (special.digamma(x + k) - special.digamma(k) - np.log1p(m / k) + (m - x) / (k + m)).sum()
+
+    by_rate = lambda rate, k: ((x - rate * t) / (1 + rate * t / k)).sum()
+    return x, t, likelihood, by_shape, by_rate
+
+
+def best_shape(score, value):
+    """The shape of greatest likelihood: every change of sign of the score on a grid, and the Poisson end."""
+    grid = np.linspace(-60, 12, 145)
+    scores = [score(math.exp(v)) for v in grid]
+    found = [math.exp(bisected(lambda v: score(math.exp(v)), a, b)) for a, b, f, g in zip(grid, grid[1:], scores, scores[1:]) if f > 0 >= g]
+    return max(found + [1e12], key=value)
+
+
+def negative_binomial_rate(counts, exposures, conf):
+    x, t, likelihood, by_shape, by_rate = nb_tables(counts, exposures)
+    poisson = lambda rate: (x * np.log(rate * t) - rate * t - special.gammaln(x + 1)).sum()
+    value = lambda rate, k: poisson(rate) if k == 1e12 else likelihood(rate, k)
+    fall, pooled = stats.chi2.isf(1 - conf, 1) / 2, x.sum() / t.sum()
+    if not x.sum():
+        return 0.0, 0.0, fall / t.sum(), math.inf
+    rate_for = lambda k: pooled * math.exp(bisected(lambda v: by_rate(pooled * math.exp(v), k), -60, 60))
+    shape = best_shape(lambda k: by_shape(rate_for(k), k), lambda k: value(pooled if k == 1e12 else rate_for(k), k))
+    if shape == 1e12:
+        rate, profile = pooled, poisson
+    else:
+        rate = rate_for(shape)
+        profile = lambda r: (lambda k: value(r, k))(best_shape(lambda k: by_shape(r, k), lambda k: value(r, k)))
+    goal = value(rate, shape) - fall
+    limit = lambda far: rate * math.exp(bisected(lambda v: profile(rate * math.exp(v)) - goal, *sorted((0, far))))
+    step = fall**0.5 * 0.1
+    while step < 600 and profile(rate * math.exp(step)) > goal:
+        step = min(2 * step, 600)
+    down = fall**0.5 * 0.1
+    while down < 600 and profile(rate * math.exp(-down)) > goal:
+        down = min(2 * down, 600)
+    return rate, limit(-down), limit(step) if step < 600 else math.inf, math.inf if shape == 1e12 else shape
+
+
+def walk(accept, reject, rate):
+    """A plan as convolutions with Poisson laws: probabilities of acceptance and rejection, mean exposure."""
+    most, now, accepted, rejected, spent = len(accept), 0.0, 0.0, 0.0, 0.0
+    state, first = np.array([1.0]), 0
+    ends = np.maximum.accumulate(reject)  # the first event number that rejects at a time: ends holds 0 for "never"
+    for cut in np.unique(np.concatenate([accept, reject[reject > 0]])):
+        limit = int(np.searchsorted(ends, cut))
+        mean, keep = rate * (cut - now), max(limit - first, 0)
+        rejected += state[keep:].sum()
+        state = state[:keep]
+        j = np.arange(keep + 1)
+        above = stats.poisson.sf(j, mean)  # P(X > j)
+        for k, share in enumerate(state):
+            rejected += share * (above[keep - k - 1] if keep > k else 1.0)
+            spent += share * above[: keep - k].sum() / rate
+        state = np.convolve(state, stats.poisson.pmf(j[:-1], mean))[:keep] if keep else state
+        done = int(np.searchsorted(accept, cut, side="right"))
+        gone = min(max(done - first, 0), len(state))
+        accepted += state[:gone].sum()
+        state, first, now = state[gone:], max(first, done), cut
+    return accepted, rejected, spent
+
+
+def fixed_plan(good, bad, alpha, beta):
+    number = next(r for r in range(1, 10**6) if special.gammainccinv(r, beta) / bad <= special.gammaincinv(r, alpha) / good)
+    end = special.gammainccinv(number, beta) / bad
+    hit, spent = stats.poisson.sf(number - 1, good * end), lambda rate: stats.poisson.sf(np.arange(number), rate * end).sum() / rate
+    return (hit, beta, spent(good), spent(bad), end) + (end,) * number + (0.0,) * number + (end,)
+
+
+def wald_plan(good, bad, alpha, beta, most, end):
+    """Lines at likelihood ratios of 1 / risk for four fifths of the risks, cut off at an event number and an exposure."""
+    k, slope = np.arange(most + 1), math.log(bad / good) / (bad - good)
+    reject = np.clip(slope * k + math.log(0.8 * alpha) / (bad - good), 0, end)
+    reject[0], reject[most] = 0, end
+    return np.minimum(slope * k[:-1] - math.log(0.8 * beta) / (bad - good), end), reject
+
+
+def plan_risks(good, bad, alpha, beta):
+    most, end = (len(OURS) - 6) // 2, OURS[4]
+    keeps = lambda at, to: walk(*wald_plan(good, bad, alpha, beta, at, to), bad)[0] - beta
+    # one event less: wherever the end is put, a risk is broken
+    if most > 1:
+        last = (math.log(bad / good) * (most - 2) - math.log(0.8 * beta)) / (bad - good)
+        if keeps(most - 1, last) <= 0:
+            to = optimize.brentq(lambda to: keeps(most - 1, to), last * 1e-3, last, xtol=1e-12 * last)
+            if walk(*wald_plan(good, bad, alpha, beta, most - 1, to), good)[1] <= alpha * (1 - 1e-9):
+                return ("one event less would do",)
+    accept, reject = wald_plan(good, bad, alpha, beta, most, end)
+    at_good, at_bad = walk(accept, reject, good), walk(accept, reject, bad)
+    kept = at_good[1] <= alpha * (1 + 1e-12) and abs(at_bad[0] - beta) <= 1e-9 * beta
+    # the end is right if it uses up the risk of accepting the bad rate
+    return (at_good[1], beta, at_good[2], at_bad[2], end) + tuple(accept) + tuple(reject) if kept else ("risk broken", at_good, at_bad)
+
+
+def exposure_to_compare(first, second, ratio, level, power):
+    mean_of = lambda exposure: exposure * (first + ratio * second)
+    p0, p1, mean = 1 / (1 + ratio), first / (first + ratio * second), mean_of(OURS[0])
+    far = mean + 6 * mean**0.5 + 4 / p0 + 10
+    n = np.arange(int(max(0, mean - 15 * mean**0.5 - 100)), int(far + 12 * far**0.5 + 100))
+    critical = stats.binom.isf(level, n, p0) + 1
+    critical = np.where(stats.binom.sf(critical - 2, n, p0) <= level, critical - 1, critical)
+    given = stats.binom.sf(critical - 1, n, p1)
+    lack = lambda m: (stats.poisson.pmf(n, m) * given).sum() - power
+    step = mean**0.5 / 50
+    if any(lack(m) < -1e-11 for m in np.arange(mean * (1 + 1e-9), far, max(step, (far - mean) / 400))):
+        return ("falls below again",)
+    if not lack(mean - step / 2) < 0 < lack(mean + step / 2):
+        return ("no crossing here",)
+    return (bisected(lack, mean - step / 2, mean + step / 2) / (first + ratio * second),)
+
+
+def exposure_to_show_below(bound, true, conf, probability):
+    for allowed in range(10**7):
+        exposure = special.gammainccinv(allowed + 1, 1 - conf) / bound
+        passed = special.pdtr(allowed, true * exposure)
+        if passed >= probability:
+            return exposure, allowed, passed
+
+
 def adjusted(kind):
     return lambda p: tuple(multipletests(p, method=kind)[1])
 
@@ -429,6 +603,71 @@ def judge_dispersion(ours, counts, exposures):
     return float(chi), float(mp.gammainc(mp.mpf(len(counts) - 1) / 2, mp.mpf(ours[0]) / 2, regularized=True))
 
 
+def judge_log_linear(ours, counts, exposures, at, conf, away):
+    """Newton in high precision from the program's own fit."""
+    y, t, x = [[mp.mpf(v) for v in values] for values in (counts, exposures, at)]
+    middle = mp.fsum(a * b for a, b in zip(x, y)) / mp.fsum(y)
+    level, slope = mp.log(mp.mpf(ours[6])), mp.mpf(ours[0])
+    for _ in range(4):
+        fit = [s * mp.exp(level + slope * (v - middle)) for s, v in zip(t, x)]
+        a, b, c = (mp.fsum(f * (v - middle) ** p for f, v in zip(fit, x)) for p in (0, 1, 2))
+        g, h = mp.fsum(n - f for n, f in zip(y, fit)), mp.fsum((n - f) * (v - middle) for n, f, v in zip(y, fit, x))
+        whole = a * c - b * b
+        level, slope = level + (c * g - b * h) / whole, slope + (a * h - b * g) / whole
+    chi = mp.fsum((n - f) ** 2 / f for n, f in zip(y, fit))
+    cov = [[c / whole, -b / whole], [-b / whole, a / whole]]
+    return line_limits(slope, level, middle, conf, away, chi, cov, len(y))
+
+
+def judge_negative_binomial(ours, counts, exposures, conf):
+    """The likelihood equations in high precision, from the program's own answer."""
+    x, t = [mp.mpf(v) for v in counts], [mp.mpf(v) for v in exposures]
+    fall = mp.findroot(lambda v: mp.erfc(mp.sqrt(v)) - mp.mpf(1 - conf), stats.chi2.isf(1 - conf, 1) / 2)
+    if not math.isfinite(ours[3]):
+        if not sum(counts):
+            return 0.0, 0.0, float(fall / mp.fsum(t)), math.inf
+        all_x, all_t = mp.fsum(x), mp.fsum(t)
+        lost = lambda rate: all_x * mp.log(all_x / (rate * all_t)) - all_x + rate * all_t - fall
+        return (float(all_x / all_t),) + tuple(float(mp.findroot(lost, v)) for v in ours[1:3]) + (math.inf,)
+
+    def likelihood(r, k):
+        part = lambda v, s: mp.loggamma(v + k) - mp.loggamma(k) - v * mp.log(k) + v * mp.log(r * s) - (v + k) * mp.log1p(r * s / k)
+        return mp.fsum(part(v, s) for v, s in zip(x, t))
+
+    by_shape = lambda r, k: mp.fsum(mp.digamma(v + k) - mp.digamma(k) - mp.log1p(r * s / k) + (r * s - v) / (k + r * s) for v, s in zip(x, t))
+    by_rate = lambda r, k: mp.fsum((v - r * s) / (k + r * s) for v, s in zip(x, t))
+    solve = lambda f, u, v: mp.findroot(lambda a, b: f(mp.exp(a), mp.exp(b)), (mp.log(u), mp.log(v)), tol=1e-24)
+    with mp.workdps(30):
+        rate, shape = map(mp.exp, solve(lambda r, k: (by_shape(r, k), by_rate(r, k)), ours[0], ours[3]))
+        goal, limits = likelihood(rate, shape) - fall, []
+        score = nb_tables(counts, exposures)
+        for end in ours[1:3]:
+            if math.isfinite(end):
+                k = best_shape(lambda k: score[3](end, k), lambda k: score[2](end, k))
+                if k == 1e12:
+                    return (math.nan,) * 4
+                limits.append(mp.exp(solve(lambda r, k: (likelihood(r, k) - goal, by_shape(r, k) * k), end, k)[0]))
+            else:
+                limits.append(mp.inf)
+        return float(rate), float(limits[0]), float(limits[1]), float(shape)
+
+
+def judge_show_below(ours, bound, true, conf, probability):
+    def plan(allowed):
+        side = mp.mpf(1 - conf)
+        mean = mp.mpf(test_length(allowed, conf))
+        slope = -mp.exp(allowed * mp.log(mean) - mean - mp.loggamma(allowed + 1))
+        for _ in range(2):
+            mean -= (mp_poisson(allowed, mean, "below") - side) / slope
+        return mean / mp.mpf(bound), mp_poisson(allowed, mean * mp.mpf(true) / mp.mpf(bound), "below") if true else mp.mpf(1)
+
+    test_length = lambda allowed, conf: special.gammainccinv(allowed + 1, 1 - conf)
+    allowed = int(ours[1])
+    exposure, passed = plan(allowed)
+    enough, less = passed >= probability * (1 - 1e-12), allowed and plan(allowed - 1)[1] >= probability * (1 + 1e-12)
+    return (float(exposure), float(allowed), float(passed)) if enough and not less else (math.nan,) * 3
+
+
 # --- the comparison -----------------------------------------------------------------------------------------------
 
 END, VALUE = 1e-8, 1e-9
@@ -460,6 +699,56 @@ def plan_input():
     good = 10 ** rng.uniform(-4, 1)
     bad = good * rng.uniform(1.3, 10)
     return good, bad, rng.uniform(0.01, 0.4), rng.uniform(0.01, 0.4), rng.randint(1, 20), math.exp(rng.uniform(math.log(good / 2), math.log(bad * 2)))
+
+
+def jackknife_input():
+    units = rng.choice([2, 3, rng.randint(2, 12), rng.randint(2, 300)])
+    if rng.random() < 0.3:
+        return tuple(rng.uniform(-100, 100) for _ in range(units)), tuple(rng.uniform(1, 100) for _ in range(units)), confidence()
+    t = tuple(10 ** rng.uniform(-1, 3) for _ in range(units))
+    return tuple(float(v) for v in spread(units)), t, confidence()
+
+
+def line_input():
+    readings, scale, origin = rng.choice([3, 4, rng.randint(3, 60)]), 10 ** rng.uniform(-3, 3), rng.choice([0, 20, -1e3])
+    scale = max(scale, abs(origin) / 100)  # at_mean is a double: a range far narrower than its value has lost the rest
+    at = [origin + scale * rng.choice([rng.random(), rng.randint(0, 10) / 10]) for _ in range(readings)]
+    t = [10 ** rng.uniform(-2, 4) for _ in range(readings)]
+    slope, clump = rng.gauss(0, 3) / scale, rng.choice([1, 1, rng.randint(2, 20)])
+    means = [s * math.exp(slope * (v - at[0])) for s, v in zip(t, at)]
+    wanted = 10 ** rng.uniform(0.5, 5)
+    draw = np.random.default_rng(rng.getrandbits(32))
+    counts = [clump * int(draw.poisson(wanted * m / sum(means) / clump)) for m in means]
+    hit = [v for v, n in zip(at, counts) if n]
+    apart = sum(counts) >= 2 and min(hit) < max(at) and max(hit) > min(at)
+    return (tuple(counts), tuple(t), tuple(at), confidence(), rng.uniform(min(at) - scale, max(at) + scale)) if apart else line_input()
+
+
+def clumped_input():
+    cells = rng.choice([2, 3, rng.randint(2, 25), rng.randint(2, 25)])
+    t = tuple(1.0 if rng.random() < 0.3 else 10 ** rng.uniform(-1, 2) for _ in range(cells))
+    shape, mean = 10 ** rng.uniform(-1, 2.5), 10 ** rng.uniform(-2, 1.5)
+    draw = np.random.default_rng(rng.getrandbits(32))
+    return tuple(int(draw.poisson(mean * s * (rng.gammavariate(shape, 1 / shape) if shape < 100 else 1))) for s in t), t, confidence()
+
+
+def risks_input():
+    good = 10 ** rng.uniform(-4, 1)
+    ratio = rng.uniform(1.1, 1.4) if rng.random() < 0.01 else 10 ** rng.uniform(math.log10(1.5), 1.5)
+    risk = lambda: rng.choice([0.1, 0.2, 0.05, 10 ** rng.uniform(-3, -0.4)])
+    return good, good * ratio, risk(), risk()
+
+
+def compare_input():
+    second = 10 ** rng.uniform(-4, 2)
+    first = second * rng.choice([10 ** rng.uniform(0.2, 2), 2.0])
+    ratio = rng.choice([1.0, 2.0, 10 ** rng.uniform(-1, 1.5)])
+    return first, rng.choice([second, second, second, 0.0]), ratio, rng.choice([0.05, 0.01, 1e-6, rng.uniform(0.001, 0.2)]), rng.choice([0.8, 0.9, rng.uniform(0.3, 0.999)])
+
+
+def below_input():
+    bound = exposure()
+    return bound, bound * rng.choice([0.0, rng.random() * 0.95, 10 ** rng.uniform(-9, 0) * 0.9]), confidence(), rng.choice([0.5, 0.8, 0.9, 0.95, 1 - 10 ** rng.uniform(-9, -0.3)])
 
 
 def runs_input():
@@ -495,6 +784,13 @@ FUNCTIONS = {
         gamma_posterior, END, None,
     ),
     "clustered_rate": (lambda: (*dispersion_input(), confidence()), clustered_rate, END, None),
+    "jackknife_ratio": (jackknife_input, jackknife_ratio, VALUE, None),
+    "log_linear": (line_input, log_linear, VALUE, judge_log_linear),
+    "negative_binomial_rate": (clumped_input, negative_binomial_rate, VALUE, judge_negative_binomial),
+    "plan_risks": (risks_input, plan_risks, VALUE, None),
+    "fixed_plan": (risks_input, fixed_plan, VALUE, None),
+    "exposure_to_compare": (compare_input, exposure_to_compare, VALUE, None),
+    "exposure_to_show_below": (below_input, exposure_to_show_below, VALUE, judge_show_below),
     "sequential": (plan_input, sequential, VALUE, None),
     "comparison_power": (
         lambda: (10 ** rng.uniform(-1, 3), rng.uniform(0.1, 10), 10 ** rng.uniform(-1, 3), rng.uniform(0.1, 10), rng.choice([0.05, 0.01, 1e-6])),

@@ -5,6 +5,7 @@ use std::time::Duration;
 
 use clap::{Args, Parser, Subcommand, ValueEnum};
 
+use super::reckon::ReckonCommand;
 use super::when::Moment;
 use crate::host::Cpu;
 use crate::ledger::groups::Dimension;
@@ -40,6 +41,9 @@ pub enum Command {
     /// Look into a ledger
     #[command(subcommand)]
     Ledger(LedgerCommand),
+    /// Reckon by hand: intervals, bounds, comparisons, sequential plans, power, each with its source
+    #[command(subcommand)]
+    Reckon(ReckonCommand),
     /// One worker; started by the other commands
     #[command(hide = true)]
     Worker {

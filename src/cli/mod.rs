@@ -7,7 +7,10 @@ mod coverage;
 mod drill;
 mod explain;
 mod ledger;
+mod lists;
 mod live;
+mod quantity;
+mod reckon;
 mod rises;
 mod sample;
 mod survey;
@@ -46,6 +49,7 @@ fn command(start: Instant) -> ExitCode {
         Command::Survey(args) => survey::run(&args),
         Command::Window(args) => window::run(&args, start),
         Command::Drill(args) => drill::run(&args, start),
+        Command::Reckon(command) => reckon::run(&command),
         Command::Ledger(LedgerCommand::Show(args)) => ledger::show(&args),
         Command::Ledger(LedgerCommand::Verify(args)) => ledger::verify(&args),
         Command::Ledger(LedgerCommand::Coverage(args)) => coverage::run(&args),

@@ -8,5 +8,6 @@ pub mod figures;
 pub mod gathering;
 pub mod ledger;
 pub mod plan;
+pub mod reckon;
 pub mod text;
 pub mod window;

@@ -2,10 +2,9 @@
 //! A cluster is whatever may share a cause: a slice, an episode, a host.
 
 use super::interval::{Interval, StatsError, check_exposure, check_runs, ln_error};
-use super::law::{CountLaw, Poisson, Tail, WHOLE};
-use super::student::student_t;
+use super::law::{CountLaw, Poisson, Tail, WHOLE, normal_reach, student_reach};
 use serde::{Deserialize, Serialize};
-use std::f64::consts::{LN_2, SQRT_2};
+use std::f64::consts::LN_2;
 
 /// A probability per run from clusters of runs.
 #[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
@@ -171,8 +170,8 @@ impl Clusters {
         let effect = if scatter <= 1.0 {
             1.0
         } else {
-            let normal = SQRT_2 * statrs::function::erf::erfc_inv(1.0 - confidence);
-            scatter * (student_t(confidence, (self.number - 1) as f64) / normal).powi(2)
+            let ln_outside = ln_side + LN_2;
+            scatter * (student_reach((self.number - 1) as usize, ln_outside) / normal_reach(ln_outside)).powi(2)
         };
         let limit = |tail| Poisson::mean_where(tail, events / effect, WHOLE, ln_side) * effect / self.exposure;
         let estimate = events / self.exposure;

@@ -103,6 +103,53 @@ pub enum StatsError {
     /// A time that is NaN or infinite.
     #[error("time {0} is not a finite number of seconds: drop or repair that record")]
     Time(f64),
+    /// A value that has to be finite is not.
+    #[error("{name} {value} is not a finite number: give {remedy}")]
+    NotFinite {
+        /// What the value was meant as.
+        name: &'static str,
+        /// The value given.
+        value: f64,
+        /// What to give instead.
+        remedy: &'static str,
+    },
+    /// A value outside of what the calculator can work with.
+    #[error("{name} {value} is out of range: give {remedy}")]
+    OutOfRange {
+        /// What the value was meant as.
+        name: &'static str,
+        /// The value given.
+        value: f64,
+        /// What to give instead.
+        remedy: &'static str,
+    },
+    /// No slope without a spread.
+    #[error("every reading is at {0}: a slope needs readings at different values")]
+    OneValue(f64),
+    /// The likelihood of a slope rises for ever.
+    #[error(
+        "all {events} events lie at the {end} value, {at}: no finite slope fits best; add readings beyond it, or more exposure elsewhere"
+    )]
+    NoFiniteSlope {
+        /// Number of events.
+        events: u64,
+        /// `highest` or `lowest`.
+        end: &'static str,
+        /// The value at which they all lie.
+        at: f64,
+    },
+    /// Two rates that only an endless test could tell apart.
+    #[error(
+        "rates {low} and {high} are too close: telling them apart takes more than {most} events; choose rates further apart or larger risks"
+    )]
+    TooClose {
+        /// The lower rate.
+        low: f64,
+        /// The higher rate.
+        high: f64,
+        /// The number of events up to which plans are worked out.
+        most: u64,
+    },
     /// The answer is larger than a count can hold exactly.
     #[error("more than 2^53 runs would be needed: allow a higher probability or less confidence")]
     BeyondCounts,
@@ -127,6 +174,10 @@ pub(super) fn check_runs(mismatches: u64, runs: u64) -> Result<(), StatsError> {
 
 pub(super) fn check_positive(name: &'static str, value: f64, remedy: &'static str) -> Result<(), StatsError> {
     if value > 0.0 && value.is_finite() { Ok(()) } else { Err(StatsError::NotPositive { name, value, remedy }) }
+}
+
+pub(super) fn check_finite(name: &'static str, value: f64, remedy: &'static str) -> Result<(), StatsError> {
+    if value.is_finite() { Ok(()) } else { Err(StatsError::NotFinite { name, value, remedy }) }
 }
 
 pub(super) fn check_exposure(exposure: f64) -> Result<(), StatsError> {

@@ -3,7 +3,7 @@
 //! Source: A. Wald, Sequential Analysis (1947); B. Epstein & M. Sobel, Ann. Math. Statist. 26 (1955).
 
 use super::interval::{StatsError, check_open_probability, check_positive};
-use super::law::{CountLaw, Poisson, Tail, WHOLE};
+use super::walk::Walk;
 use serde::{Deserialize, Serialize};
 
 /// A truncated plan on events in exposure. The unit of exposure is the caller's.
@@ -132,29 +132,29 @@ impl SequentialPlan {
             self.accept_at.iter().copied().chain(self.reject_at.iter().flatten().copied()).collect();
         cuts.sort_by(f64::total_cmp);
         cuts.dedup();
-        let mut open = vec![0.0; most];
-        open[0] = 1.0;
-        let (mut now, mut accept, mut reject, mut expected_exposure) = (0.0, 0.0, 0.0, 0.0);
-        for cut in cuts {
-            let rejecting = (0..=most).find(|&k| self.reject_at[k].is_some_and(|until| until >= cut)).unwrap_or(most);
-            let law = Poisson { mean: rate * (cut - now) };
-            let mut next = vec![0.0; most];
-            for (from, &share) in open.iter().enumerate().filter(|(_, share)| **share > 0.0) {
-                for (to, slot) in next.iter_mut().enumerate().take(rejecting).skip(from) {
-                    let more = (to - from) as f64;
-                    *slot += share * law.ln_point(more).exp();
-                    // mean time spent with `more` further events: P(more than that many come) / rate
-                    expected_exposure += share * law.ln_tail(Tail::Upper, more + 1.0, WHOLE).exp() / rate;
-                }
-                let escape = rejecting.saturating_sub(from) as f64;
-                reject += share * if escape == 0.0 { 1.0 } else { law.ln_tail(Tail::Upper, escape, WHOLE).exp() };
-            }
-            for (share, _) in next.iter_mut().zip(&self.accept_at).filter(|(_, at)| **at <= cut) {
-                accept += std::mem::take(share);
-            }
-            (open, now) = (next, cut);
+        // entries before the first one that rejects at a time or later: as time goes on, only more
+        let mut latest = vec![f64::NEG_INFINITY; most + 1];
+        for (k, until) in self.reject_at.iter().enumerate() {
+            latest[k] = until.unwrap_or(f64::NEG_INFINITY).max(if k == 0 { f64::NEG_INFINITY } else { latest[k - 1] });
         }
-        Ok(OperatingPoint { accept, reject, expected_exposure })
+        let (mut walk, mut rejecting, mut accepting) = (Walk::new(rate), 0, 0);
+        for cut in cuts {
+            while rejecting < most && latest[rejecting] < cut {
+                rejecting += 1;
+            }
+            walk.forward(cut, rejecting);
+            while accepting < most && self.accept_at[accepting] <= cut {
+                accepting += 1;
+            }
+            walk.accept_below(accepting);
+        }
+        Ok(OperatingPoint { accept: walk.accept, reject: walk.reject, expected_exposure: walk.exposure })
+    }
+
+    /// The exposure after which the plan has decided in any case.
+    #[must_use]
+    pub fn longest(&self) -> f64 {
+        self.accept_at.last().copied().unwrap_or(0.0)
     }
 
     fn check(&self) -> Result<(), StatsError> {

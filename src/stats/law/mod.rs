@@ -6,10 +6,12 @@
 mod binomial;
 mod hypergeometric;
 mod poisson;
+mod student;
 
 pub(super) use binomial::Binomial;
 pub(super) use hypergeometric::Hypergeometric;
 pub(super) use poisson::Poisson;
+pub(super) use student::{normal_reach, student_reach};
 
 /// Which tail of a law, the counted value included.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
