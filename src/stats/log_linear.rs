@@ -141,34 +141,32 @@ impl Line {
                 return Err(StatsError::NoFiniteSlope { events, end, at });
             }
         }
-        // distances from the end that lies nearer to the events, in units of the range: all terms below are positive,
-        // so the mean keeps its digits even where nearly all events lie at that end
+        // distances from the mean in units of the range, by way of the reading with most events: where nearly all events
+        // lie at one value the mean lies next to it, and its difference from there keeps the digits that it has lost itself
         let range = most - least;
-        let mean_from = |distance: &dyn Fn(f64) -> f64| {
-            readings.iter().map(|reading| reading.events as f64 * distance(reading.at)).sum::<f64>() / events as f64
-        };
-        let (above, below) = (mean_from(&|at| (at - least) / range), mean_from(&|at| (most - at) / range));
-        let (end, sign, mean) = if above < below { (least, 1.0, above) } else { (most, -1.0, below) };
-        let distances: Vec<f64> = readings.iter().map(|reading| sign * (reading.at - end) / range).collect();
+        let origin = readings.iter().max_by_key(|reading| reading.events).map_or(least, |reading| reading.at);
+        let offset = |reading: &Reading| (reading.at - origin) / range;
+        let moment: f64 = readings.iter().map(|reading| reading.events as f64 * offset(reading)).sum();
+        let mean = moment / events as f64;
+        let away: Vec<f64> = readings.iter().map(|reading| offset(reading) - mean).collect();
         let ln_weights = |slope: f64| -> Vec<f64> {
-            readings.iter().zip(&distances).map(|(reading, d)| reading.exposure.ln() + slope * (d - mean)).collect()
+            readings.iter().zip(&away).map(|(reading, away)| reading.exposure.ln() + slope * away).collect()
         };
         // what lies beyond the mean over what lies before it, each from positive terms and both as logarithms
         let excess = |slope: f64| {
-            let moments = ln_weights(slope).into_iter().zip(&distances);
-            let (beyond, before): (Vec<_>, Vec<_>) =
-                moments.map(|(ln, d)| (ln, d - mean)).partition(|part| part.1 > 0.0);
-            let side = |parts: Vec<(f64, f64)>| ln_sum(parts.iter().map(|(ln, away)| ln + away.abs().ln()));
+            let moments = ln_weights(slope).into_iter().zip(&away);
+            let (beyond, before): (Vec<_>, Vec<_>) = moments.partition(|part| *part.1 > 0.0);
+            let side = |parts: Vec<(f64, &f64)>| ln_sum(parts.iter().map(|(ln, away)| ln + away.abs().ln()));
             side(beyond) - side(before)
         };
         let slope = root(excess, true, 0.0, 1.0, (-STEEPEST, STEEPEST));
         let logs = ln_weights(slope);
         let ln_total = ln_sum(logs.iter().copied());
         let fitted: Vec<f64> = logs.iter().map(|ln| events as f64 * (ln - ln_total).exp()).collect();
-        let spread: f64 = fitted.iter().zip(&distances).map(|(fit, d)| fit * (d - mean).powi(2)).sum();
+        let spread: f64 = fitted.iter().zip(&away).map(|(fit, away)| fit * away * away).sum();
         Ok(Self {
-            slope: sign * slope / range,
-            at_mean: end + sign * mean * range,
+            slope: slope / range,
+            at_mean: mean.mul_add(range, origin),
             fitted,
             spread: spread * range * range,
             rate: events as f64 * (-ln_total).exp(),

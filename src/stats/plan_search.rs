@@ -23,9 +23,10 @@ impl SequentialPlan {
     /// A plan between a good rate and a bad one (same unit, one over the exposure) whose exact risks are at most `alpha`
     /// (of rejecting the good rate) and `beta` (of accepting the bad one): Wald's lines, so far apart that without an end
     /// they would keep four fifths of both risks, cut off at the least number of events at which the exact ones are kept.
-    /// At either rate it takes in the mean half to three quarters of the exposure of
-    /// [`SequentialPlan::fixed_with_risks`], at the longest up to 1.3 times as much. If that plan rejects at the first
-    /// event there is nothing to gain, and it is the answer.
+    /// At either rate it takes in the mean about half of the exposure of [`SequentialPlan::fixed_with_risks`] (a seventh to
+    /// five sixths of it), at the longest about 1.2 times as much (with few events up to 1.5). If that plan rejects at the
+    /// first event there is nothing to gain, and it is the answer. The search takes well under a second for a plan of
+    /// five thousand events, and some ten for the longest.
     ///
     /// # Errors
     /// Rates not positive and finite, `bad` less than 1.05 times `good`, risks below 10⁻⁹ or not below a half, or a plan

@@ -276,6 +276,13 @@ fn a_clumped_rate_is_the_library_s() {
     close(found.rate.estimate, 2.568_184_664_67, 1e-9);
     close(found.rate.lower, 1.157_512_366_43, 1e-9);
     close(found.rate.upper, 6.671_486_282_31, 1e-9);
+    // unequal exposures: at a shape without end the likelihood has a maximum too, but a lower one
+    let two =
+        stats::negative_binomial_rate(&[(1452, 46.696_339_990_212_145), (50, 1.0)], 0.890_669_227_241_138_1).unwrap();
+    close(two.shape.unwrap(), 23.389_034_970_61, 1e-9);
+    close(two.rate.estimate, 38.398_456_564_51, 1e-9);
+    close(two.rate.lower, 27.920_626_159_49, 1e-9);
+    close(two.rate.upper, 59.431_169_243_68, 1e-9);
 }
 
 /// Where only chance scatters the counts: deviance 2 (x ln(x/m) − x + m) at its 95 % point 3.8415, by SciPy 1.17.1 and
