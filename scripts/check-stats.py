@@ -201,7 +201,8 @@ def gamma_posterior(a, b, x, t, conf):
 def clustered_rate(counts, exposures, conf):
     x, t, side = np.array(counts, float), np.array(exposures), (1 - conf) / 2
     rate, m = x.sum() / t.sum(), len(x)
-    d = max(1.0, m / (m - 1) * ((x - rate * t) ** 2).sum() / x.sum())
+    d = m / (m - 1) * ((x - rate * t) ** 2).sum() / x.sum()
+    d = 1.0 if d <= 1 else d * (stats.t.isf(side, m - 1) / stats.norm.isf(side)) ** 2
     k = x.sum() / d
     return special.gammaincinv(k, side) * d / t.sum(), special.gammainccinv(k + 1, side) * d / t.sum()
 

@@ -379,13 +379,10 @@ fn the_readme_shows_what_comes_out() {
     let readme = include_str!("../../README.md");
     let (_, section) = readme.split_once("## Reckoning by hand\n").expect("the section");
     let section = section.split("\n## ").next().unwrap();
-    let lines: String = section
-        .lines()
-        .filter_map(|l| if l.is_empty() { Some("") } else { l.strip_prefix("    ") })
-        .fold(String::new(), |all, line| all + line + "\n");
+    let blocks = section.split("```console\n").skip(1).map(|block| block.split("```").next().unwrap());
     let mut shown = 0;
-    for block in lines.split("$ proofhouse reckon ").skip(1) {
-        let (command, output) = block.split_once('\n').unwrap();
+    for block in blocks {
+        let (command, output) = block.strip_prefix("$ proofhouse reckon ").expect(block).split_once('\n').unwrap();
         let output = output.trim_end();
         assert!(
             !output.is_empty() && text(command).starts_with(output),
