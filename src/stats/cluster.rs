@@ -80,6 +80,9 @@ pub fn compare_clustered(groups: &[ClusteredShare]) -> Result<ClusteredTest, Sta
     Ok(ClusteredTest { chi_square_naive, chi_square, degrees, p_value })
 }
 
+/// Expected counts below this are the end of the search for a limit, and no limit.
+const LEAST: f64 = 1e-304;
+
 /// Counts by cluster, where clusters without events are only summed: that is all a rate and its scatter need of them.
 #[derive(Debug, Clone, PartialEq, Default)]
 pub struct Clusters {
@@ -173,7 +176,11 @@ impl Clusters {
             let ln_outside = ln_side + LN_2;
             scatter * (student_reach((self.number - 1) as usize, ln_outside) / normal_reach(ln_outside)).powi(2)
         };
-        let limit = |tail| Poisson::mean_where(tail, events / effect, WHOLE, ln_side) * effect / self.exposure;
+        let limit = |tail| {
+            let mean = Poisson::mean_where(tail, events / effect, WHOLE, ln_side);
+            // a thousandth of an event is nearly nothing known: the limit lies below every number that can be written
+            if mean < LEAST { 0.0 } else { mean * effect / self.exposure }
+        };
         let estimate = events / self.exposure;
         Ok(Interval { estimate, lower: limit(Tail::Upper), upper: limit(Tail::Lower), confidence })
     }
