@@ -76,6 +76,11 @@ fn answer(words: &[String]) -> Result<Vec<f64>, StatsError> {
             let clusters: Vec<(u64, f64)> = counts(1).into_iter().zip(numbers(2)).collect();
             ends(stats::clustered_rate(&clusters, number(3))?)
         }
+        "chance_of_scatter" => {
+            let clusters: Vec<(u64, f64)> = counts(1).into_iter().zip(numbers(2)).collect();
+            vec![stats::Clusters::of(&clusters)?.chance_of_scatter()]
+        }
+        "poisson_at_least" => vec![stats::poisson_at_least(count(1), number(2))],
         "sequential" => {
             let plan = stats::SequentialPlan::wald(number(1), number(2), number(3), number(4), count(5) as usize)?;
             let point = plan.at_rate(number(6))?;

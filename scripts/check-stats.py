@@ -207,6 +207,20 @@ def clustered_rate(counts, exposures, conf):
     return special.gammaincinv(k, side) * d / t.sum(), special.gammainccinv(k + 1, side) * d / t.sum()
 
 
+def chance_of_scatter(counts, exposures):
+    """Fisher's test from one event a cluster on, else the Poisson tail of pairs in one cluster."""
+    x, t = [int(v) for v in counts], [mp.mpf(v) for v in exposures]
+    n, total = sum(x), mp.fsum(t)
+    if n < 2:
+        return (1.0,)
+    if n >= len(x):
+        chi = mp.fsum((v - n * s / total) ** 2 / (n * s / total) for v, s in zip(x, t))
+        return (float(mp.gammainc(mp.mpf(len(x) - 1) / 2, chi / 2, regularized=True)),)
+    pairs = sum(v * (v - 1) // 2 for v in x)
+    mean = mp.mpf(n * (n - 1)) / 2 * mp.fsum(s * s for s in t) / total**2
+    return (float(mp.gammainc(pairs, 0, mean, regularized=True)) if pairs else 1.0,)
+
+
 def sequential(good, bad, alpha, beta, most, rate):
     """The same plan as a chain in continuous time: exponential of its generator over each stretch."""
     slope = math.log(bad / good) / (bad - good)
@@ -685,6 +699,15 @@ def dispersion_input():
     return spread(cells), t
 
 
+def sparse_input():
+    """A few events in many clusters, some of them together."""
+    cells = rng.randint(5, 400)
+    counts = [0] * cells
+    for _ in range(rng.randint(1, 6)):
+        counts[rng.randrange(cells)] += rng.choice([1, 1, 2, 5])
+    return tuple(counts), tuple(1.0 if rng.random() < 0.5 else rng.uniform(0.5, 2) for _ in range(cells))
+
+
 def gamma_input():
     """Counts that scatter clearly more than chance, so that there is a law to fit."""
     cells = rng.randint(5, 60)
@@ -792,6 +815,13 @@ FUNCTIONS = {
     "fixed_plan": (risks_input, fixed_plan, VALUE, None),
     "exposure_to_compare": (compare_input, exposure_to_compare, VALUE, None),
     "exposure_to_show_below": (below_input, exposure_to_show_below, VALUE, judge_show_below),
+    "chance_of_scatter": (
+        lambda: dispersion_input() if rng.random() < 0.5 else sparse_input(), chance_of_scatter, VALUE, None,
+    ),
+    "poisson_at_least": (
+        lambda: (big(10**6), 10 ** rng.uniform(-9, 6)), lambda k, m: (float(special.gammainc(k, m)) if k else 1.0,), VALUE,
+        lambda ours, k, m: (float(mp.gammainc(k, 0, mp.mpf(m), regularized=True)) if k else 1.0,),
+    ),
     "sequential": (plan_input, sequential, VALUE, None),
     "comparison_power": (
         lambda: (10 ** rng.uniform(-1, 3), rng.uniform(0.1, 10), 10 ** rng.uniform(-1, 3), rng.uniform(0.1, 10), rng.choice([0.05, 0.01, 1e-6])),

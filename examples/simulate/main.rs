@@ -2,6 +2,7 @@
 //! Run by `scripts/simulate-statistics`; seeded, so a run can be repeated.
 
 mod exact;
+mod host;
 mod intervals;
 mod process;
 mod verdicts;

@@ -29,7 +29,7 @@ impl Layout {
     fn slice_at(&self, time: f64) -> Option<u64> {
         let pitch = WINDOW / self.slices as f64;
         let slice = (time / pitch).floor();
-        (time >= 0.0 && time < WINDOW && time - slice * pitch < 1.0).then_some(slice as u64)
+        ((0.0..WINDOW).contains(&time) && time - slice * pitch < 1.0).then_some(slice as u64)
     }
 }
 
