@@ -104,7 +104,8 @@ impl Gathering {
 
     /// The kernel's variant that was run least on this cpu, and the bound that its silence gives.
     fn weakest(&self, cpu: Cpu, frame: &Frame) -> Option<Weakest> {
-        let clean = self.tally.covers.iter().filter(|(key, cover)| key.cpu == cpu && cover.all.wrong() == 0);
+        let alone = |cover: &crate::ledger::cells::Cover| cover.all.partners.is_empty() && cover.all.wrong() == 0;
+        let clean = self.tally.covers.iter().filter(|(key, cover)| key.cpu == cpu && alone(cover));
         let (key, cover) = clean.min_by_key(|(_, cover)| cover.all.busy_ns)?;
         Some(Weakest {
             kernel: key.kernel.clone(),

@@ -115,7 +115,7 @@ impl Clusters {
     }
 
     /// Variance of the number of events over what independent events would have.
-    fn design_effect(&self) -> f64 {
+    pub(super) fn design_effect(&self) -> f64 {
         let (number, events) = (self.number as f64, self.events());
         let rate = events / self.exposure;
         let hit: f64 = self.hit.iter().map(|&(x, t)| (x as f64 - rate * t).powi(2) - (rate * t).powi(2)).sum();
@@ -164,20 +164,25 @@ impl Clusters {
             return Err(StatsError::TooFew { name: "clusters", given: self.number as usize, needed: 2 });
         }
         check_exposure(self.exposure)?;
-        let ln_side = ln_error(confidence)? - LN_2;
-        let events = self.events();
-        if events == 0.0 {
+        ln_error(confidence)?;
+        if self.hit.is_empty() {
             return super::garwood(0, self.exposure, confidence);
         }
-        let scatter = self.design_effect();
+        self.rate_scattered(self.design_effect(), (self.number - 1) as usize, confidence)
+    }
+
+    /// The same with a design effect from elsewhere, known to so many degrees of freedom (1 or more). Clusters and
+    /// exposure are the caller's to check; there are events.
+    pub(super) fn rate_scattered(&self, scatter: f64, degrees: usize, confidence: f64) -> Result<Interval, StatsError> {
+        let ln_outside = ln_error(confidence)?;
         let effect = if scatter <= 1.0 {
             1.0
         } else {
-            let ln_outside = ln_side + LN_2;
-            scatter * (student_reach((self.number - 1) as usize, ln_outside) / normal_reach(ln_outside)).powi(2)
+            scatter * (student_reach(degrees, ln_outside) / normal_reach(ln_outside)).powi(2)
         };
+        let events = self.events();
         let limit = |tail| {
-            let mean = Poisson::mean_where(tail, events / effect, WHOLE, ln_side);
+            let mean = Poisson::mean_where(tail, events / effect, WHOLE, ln_outside - LN_2);
             // a thousandth of an event is nearly nothing known: the limit lies below every number that can be written
             if mean < LEAST { 0.0 } else { mean * effect / self.exposure }
         };
