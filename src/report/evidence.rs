@@ -81,8 +81,16 @@ impl Gathering {
             memory_errors: self.memory.contains(&cpu) || mine.iter().any(memory),
             confirmations: mine.iter().map(|f| f.confirmation).collect(),
             confirmed_before: before.confirmed,
-            // of a worker that was lost with two cpus at work nobody knows which of them it was
-            lost: self.lost.iter().filter(|l| l.cpu == cpu || l.partner == Some(cpu)).map(|l| l.how.clone()).collect(),
+            // of a worker that was lost with two cpus at work nobody knows which of them it was, unless one is convicted
+            lost: self
+                .lost
+                .iter()
+                .filter(|l| match l.partner {
+                    None => l.cpu == cpu,
+                    Some(partner) => (l.cpu == cpu && !convicted(partner)) || (partner == cpu && !convicted(l.cpu)),
+                })
+                .map(|l| l.how.clone())
+                .collect(),
         }
     }
 

@@ -298,7 +298,7 @@ impl WindowReport {
 
     fn details(&self, out: &mut String) {
         for c in &self.cores {
-            let _ = writeln!(out, "\ncpu {}: {}", c.cpu, c.statement);
+            let _ = writeln!(out, "\n{}", folded(&format!("cpu {}: {}", c.cpu, c.statement)));
             if c.together.runs > 0 {
                 let Together { runs, mismatches } = c.together;
                 let _ = writeln!(out, "  together with another cpu: {mismatches} wrong in {runs} runs");

@@ -1,7 +1,7 @@
 //! From the events of windows to verdicts, and what stands beside them: what would settle a mismatch, and the evidence.
 
 use proofhouse::event::{
-    Confirmation, Ending, Event, Finding, FoldCheck, Job, Leg, Opened, Purpose, Slice, Surroundings,
+    Confirmation, Ending, Event, Finding, FoldCheck, How, Job, Leg, Lost, Opened, Purpose, Slice, Surroundings,
 };
 use proofhouse::host::Cpu;
 use proofhouse::judge::verdict::Verdict;
@@ -172,6 +172,31 @@ fn a_confirmed_mismatch_withdraws_unless_memory_errors_came_with_it() {
     let report = play(&["corrected memory errors at mc0: 3 more"]);
     assert_eq!(report.cores[1].verdict, Verdict::Watch);
     assert!(report.cores[1].evidence.iter().any(|line| line.contains("memory is not excluded")));
+}
+
+#[test]
+fn a_worker_lost_with_two_cpus_at_work_is_held_against_both_unless_one_is_convicted() {
+    let lost = Event::Lost(Lost {
+        job_id: 1,
+        job: Job::Window,
+        slice: 20,
+        cpu: SUSPECT,
+        core: SUSPECT.0,
+        kernel: "sync.counter".to_owned(),
+        variant: "portable".to_owned(),
+        condition: "all steady 100% in-pair 1KiB".to_owned(),
+        wall_ms: 1,
+        how: How::Signal(11),
+        partner: Some(Cpu(0)),
+    });
+    let mut events = clean(1, 30.0);
+    events.push(lost);
+    let verdicts = |report: &WindowReport| report.cores.iter().map(|c| c.verdict).collect::<Vec<_>>();
+    let report = window(&mut Tally::new(Scope::default()), 1, &events);
+    assert_eq!(verdicts(&report), [Verdict::Watch, Verdict::Watch]);
+    events.extend([Event::Slice(slice(1, 9, SUSPECT, 10.0, 4)), finding(1, Confirmation::Repeated)]);
+    let report = window(&mut Tally::new(Scope::default()), 1, &events);
+    assert_eq!(verdicts(&report), [Verdict::Clear, Verdict::Withdraw]);
 }
 
 #[test]

@@ -249,9 +249,13 @@ impl Shown {
     fn left(&self, out: &mut String) {
         if self.without_slice > 0 {
             let text = format!(
-                "{} mismatches are on record whose slice never was, because its worker or the machine was lost: evidence \
-                 without exposure, in no sum.",
-                self.without_slice
+                "{} on record whose slice never was, because its worker or the machine was lost: evidence without exposure, \
+                 in no sum.",
+                if self.without_slice == 1 {
+                    "1 mismatch is".to_owned()
+                } else {
+                    format!("{} mismatches are", self.without_slice)
+                }
             );
             let _ = writeln!(out, "\n{}", folded(&text));
         }
